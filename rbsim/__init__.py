@@ -1,0 +1,1 @@
+"""Numerical twin of a Rayleigh–Bénard cell."""
