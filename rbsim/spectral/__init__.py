@@ -1,0 +1,1 @@
+"""Numbers on the grid, no physics: grid, transforms, recombined bases, banded operators and solves."""
