@@ -65,7 +65,8 @@ class BoussinesqEquations:
         self._inverse_spacings = np.append(1.0 / grid.spacing_z, grid.nx / grid.width)
         self._block = max(1, min(grid.nz, BLOCK_BYTES // (7 * 8 * grid.nx)))
         self._scratch = [
-            (np.empty((3, self._block, grid.nx)), np.empty((4, self._block, grid.nx))) for _ in range(team.threads)
+            (np.empty((3, self._block, grid.nx)), np.empty((4, self._block, grid.nx)))
+            for _ in range(team.threads)
         ]
 
     def new_state(self) -> State:
@@ -125,7 +126,7 @@ class BoussinesqEquations:
         kernels.assemble(spectra, self._tables, self.grid.wavenumbers, terms, start, stop)
 
     def fields(self, state: State) -> tuple[Array, Array, Array]:
-        """Return horizontal velocity, vertical velocity and temperature on the grid, each of shape (nz, nx)."""
+        """Return horizontal and vertical velocity and temperature on the grid, each of shape (nz, nx)."""
         self.load_columns(state, 0, self.grid.modes_x)
         values = np.empty((3, self.grid.nz, self.grid.nx))
         self.transforms.rows_to_values(0, self.grid.nz, values)
@@ -180,5 +181,6 @@ def _projection_tables(grid: Grid, order: int, rows: int) -> tuple[Array, ...]:
         kinds.append((derivative(2, modes, order), range(2, 2 * order - 1, 2)))
     kinds.append((-1.0 * derivative(1, modes, order), range(1, 2 * order, 2)))
     return tuple(
-        np.ascontiguousarray(diagonal_table(sparse.csr_array(op @ scale), offsets, rows)) for op, offsets in kinds
+        np.ascontiguousarray(diagonal_table(sparse.csr_array(op @ scale), offsets, rows))
+        for op, offsets in kinds
     )

@@ -14,7 +14,7 @@ from rbsim.spectral.kernels import FAST, combine, substitute
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def synthesise(theta, psi, bases, wavenumbers, stack, start, stop):  # noqa: PLR0913
+def synthesise(theta, psi, bases, wavenumbers, stack, start, stop):
     """Fill the coefficient stack of u = −∂z ψ, w = ∂x ψ and θ.
 
     Parameters
@@ -57,7 +57,7 @@ def _differentiate(above, coefficients, weight, target):
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def _recombine(pairs, stencil, stride, n, scale, row, lo):  # noqa: PLR0913
+def _recombine(pairs, stencil, stride, n, scale, row, lo):
     """Write the Chebyshev coefficients of degree n of the real columns from `lo` on to `row`."""
     row[:] = 0.0
     for i in range(0, stencil.shape[0], stride):
@@ -69,7 +69,7 @@ def _recombine(pairs, stencil, stride, n, scale, row, lo):  # noqa: PLR0913
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def multiply_fields(values, inverse_spacings, products, rates, first):  # noqa: PLR0913
+def multiply_fields(values, inverse_spacings, products, rates, first):
     """Form the products uw, w² − u², uθ, wθ and the Courant rate of every row.
 
     Parameters
@@ -109,7 +109,7 @@ def _largest_rate(us, ws, across, upwards):
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def assemble_heat(stack, products, tables, wavenumbers, explicit, start, stop):  # noqa: PLR0913
+def assemble_heat(stack, products, tables, wavenumbers, explicit, start, stop):
     """Project −∂x(uθ) − ∂z(wθ) + w on the test functions of the heat equation.
 
     Parameters
@@ -151,7 +151,7 @@ def assemble_heat(stack, products, tables, wavenumbers, explicit, start, stop): 
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def assemble_flow(stack, products, tables, wavenumbers, explicit, start, stop):  # noqa: PLR0913
+def assemble_flow(stack, products, tables, wavenumbers, explicit, start, stop):
     """Project (∂zz − ∂xx)(uw) − ∂xz(w² − u²) + ∂xθ on the test functions of the flow equation.
 
     Parameters
@@ -179,7 +179,13 @@ def assemble_flow(stack, products, tables, wavenumbers, explicit, start, stop): 
         for m in range(row.size):
             k = wave[m]
             square = k * k
-            f0, f1, f2, f3, f4 = square * a0, square * a1 + c1, square * a2 + c2, square * a3 + c3, square * a4
+            f0, f1, f2, f3, f4 = (
+                square * a0,
+                square * a1 + c1,
+                square * a2 + c2,
+                square * a3 + c3,
+                square * a4,
+            )
             across_re = b0 * e0[m].real + b1 * e1[m].real + b2 * e2[m].real + b3 * e3[m].real
             across_im = b0 * e0[m].imag + b1 * e1[m].imag + b2 * e2[m].imag + b3 * e3[m].imag
             lift_re = a0 * t0[m].real + a1 * t1[m].real + a2 * t2[m].real + a3 * t3[m].real + a4 * t4[m].real
@@ -192,7 +198,7 @@ def assemble_flow(stack, products, tables, wavenumbers, explicit, start, stop): 
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def assemble(spectra, tables, wavenumbers, explicit, start, stop):  # noqa: PLR0913
+def assemble(spectra, tables, wavenumbers, explicit, start, stop):
     """Assemble the explicit terms of both equations.
 
     Parameters
@@ -213,7 +219,7 @@ def assemble(spectra, tables, wavenumbers, explicit, start, stop):  # noqa: PLR0
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def solve_stage(operator, weights, factors, operands, increment, start, stop):  # noqa: PLR0913
+def solve_stage(operator, weights, factors, operands, increment, start, stop):
     """Solve (M − β Δt L) δ = Δt [(α + β) L c + γ N + ζ N_old] and add δ to c.
 
     Parameters

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from fractions import Fraction as F
+from fractions import Fraction
 
 
 @dataclass(frozen=True)
@@ -20,10 +20,10 @@ class LowStorageScheme:
         Order of the explicit part.
     """
 
-    alpha: tuple[F, ...]
-    beta: tuple[F, ...]
-    gamma: tuple[F, ...]
-    zeta: tuple[F, ...]
+    alpha: tuple[Fraction, ...]
+    beta: tuple[Fraction, ...]
+    gamma: tuple[Fraction, ...]
+    zeta: tuple[Fraction, ...]
     order: int
 
     def __post_init__(self) -> None:
@@ -41,9 +41,9 @@ class LowStorageScheme:
 
 #: Spalart, Moser & Rogers 1991, J. Comput. Phys. 96, 297: third order explicit, second order implicit.
 SPALART_MOSER_ROGERS = LowStorageScheme(
-    alpha=(F(29, 96), F(-3, 40), F(1, 6)),
-    beta=(F(37, 160), F(5, 24), F(1, 6)),
-    gamma=(F(8, 15), F(5, 12), F(3, 4)),
-    zeta=(F(0), F(-17, 60), F(-5, 12)),
+    alpha=(Fraction(29, 96), Fraction(-3, 40), Fraction(1, 6)),
+    beta=(Fraction(37, 160), Fraction(5, 24), Fraction(1, 6)),
+    gamma=(Fraction(8, 15), Fraction(5, 12), Fraction(3, 4)),
+    zeta=(Fraction(0), Fraction(-17, 60), Fraction(-5, 12)),
     order=3,
 )

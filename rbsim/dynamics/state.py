@@ -1,4 +1,4 @@
-"""The state of a cell: trial-function coefficients of temperature departure and streamfunction, and the clock."""
+"""The state of a cell: coefficients of temperature departure and streamfunction, and the clock."""
 
 from __future__ import annotations
 

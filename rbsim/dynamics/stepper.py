@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from functools import partial
+
 import numpy as np
 
 from rbsim.dynamics import kernels
@@ -25,7 +27,9 @@ class Stepper:
         How to integrate it.
     """
 
-    def __init__(self, equations: BoussinesqEquations, scheme: LowStorageScheme = SPALART_MOSER_ROGERS) -> None:
+    def __init__(
+        self, equations: BoussinesqEquations, scheme: LowStorageScheme = SPALART_MOSER_ROGERS
+    ) -> None:
         self.equations = equations
         self.scheme = scheme
         self.step_size = 0.0
@@ -65,16 +69,14 @@ class Stepper:
         """Complete the step that `evaluate` began; the state changes in place, its clock included."""
         equations, last = self.equations, self.scheme.stages - 1
         for stage in range(self.scheme.stages):
-            equations.team.share(
-                equations.grid.modes_x, lambda start, stop, _, i=stage: self._advance_columns(state, i, start, stop)
-            )
+            equations.team.share(equations.grid.modes_x, partial(self._advance_columns, state, stage))
             self._terms.reverse()
             if stage < last:
                 equations.multiply_rows()
         state.time += self.step_size
         state.steps += 1
 
-    def _advance_columns(self, state: State, stage: int, start: int, stop: int) -> None:
+    def _advance_columns(self, state: State, stage: int, start: int, stop: int, _: int) -> None:
         """Finish one stage for some wavenumbers and begin the next one."""
         new, old = self._terms
         self.equations.unload_columns(new, start, stop)

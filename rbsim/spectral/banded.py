@@ -38,7 +38,7 @@ class BandedPair:
     @property
     def rows(self) -> int:
         """Number of unknowns of each wavenumber."""
-        return self.bands.shape[3]
+        return int(self.bands.shape[3])
 
     @cached_property
     def paired_squares(self) -> Array:
@@ -71,6 +71,14 @@ class BandedPair:
         result = np.empty_like(values)
         operands = (values, values, values)
         kernels.combine(
-            bands, self.paired_squares, self.lower, self.stride, (1.0, 0.0, 0.0), operands, result, 0, values.shape[1]
+            bands,
+            self.paired_squares,
+            self.lower,
+            self.stride,
+            (1.0, 0.0, 0.0),
+            operands,
+            result,
+            0,
+            values.shape[1],
         )
         return result

@@ -2,8 +2,8 @@
 
 Every loop works on the columns start … stop−1 only; columns are independent, so threads share them and the
 result does not depend on their number. Complex rows are walked as pairs of reals, which the compiler turns
-into full vector instructions, and rows are cut out
-before the innermost loops, which then start at zero (else each index is checked for its sign). Plain NumPy twins: tests/spectral/plain.py.
+into full vector instructions, and rows are cut out before the innermost loops, which then start at zero
+(else each index is checked for its sign). Plain NumPy twins: tests/spectral/test_banded.py.
 """
 
 from __future__ import annotations
@@ -16,7 +16,7 @@ FAST = {"contract", "reassoc", "nsz", "arcp"}
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def factorise(bands, squares, shift, lower, stride, factors):  # noqa: PLR0913
+def factorise(bands, squares, shift, lower, stride, factors):
     """Fill `factors` with the LU decomposition, without pivoting, of mass − shift·stiffness.
 
     Parameters
@@ -72,7 +72,7 @@ def _subtract(weights, source, target):
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def substitute(factors, lower, stride, values, total, start, stop):  # noqa: PLR0913
+def substitute(factors, lower, stride, values, total, start, stop):
     """Solve the factorised systems in place and add the solutions to a running total.
 
     Parameters
@@ -110,7 +110,7 @@ def substitute(factors, lower, stride, values, total, start, stop):  # noqa: PLR
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def combine(bands, squares, lower, stride, weights, operands, result, start, stop):  # noqa: PLR0913
+def combine(bands, squares, lower, stride, weights, operands, result, start, stop):
     """Write weights[0]·B·values + weights[1]·first + weights[2]·second, with B = Σ_p (k²)ᵖ bands[p].
 
     Parameters

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -30,7 +31,10 @@ class PlateCondition:
     def on_chebyshev(self, degree: int) -> Fraction:
         """Return the exact value of the condition on T_degree(1 − 2z)."""
         return sum(
-            (Fraction(w) * _derivative_at_plate(degree, order, self.at_top) for order, w in enumerate(self.weights)),
+            (
+                Fraction(w) * _derivative_at_plate(degree, order, self.at_top)
+                for order, w in enumerate(self.weights)
+            ),
             Fraction(0),
         )
 
@@ -74,8 +78,8 @@ class Recombination:
         """Index offsets of the non-vanishing stencil rows."""
         return range(0, self.conditions + 1, self.stride)
 
-    def to_chebyshev(self, coefficients: NDArray[np.generic]) -> NDArray[np.generic]:
-        """Turn trial-function coefficients, shape (size, …), into Chebyshev ones, shape (size + conditions, …)."""
+    def to_chebyshev(self, coefficients: NDArray[Any]) -> NDArray[Any]:
+        """Turn trial-function coefficients (size, …) into Chebyshev ones (size + conditions, …)."""
         shape = (self.size + self.conditions, *coefficients.shape[1:])
         result = np.zeros(shape, dtype=coefficients.dtype)
         column = (slice(None),) + (None,) * (coefficients.ndim - 1)
@@ -83,7 +87,7 @@ class Recombination:
             result[i : i + self.size] += self.stencil[i][column] * coefficients
         return result
 
-    def from_chebyshev(self, coefficients: NDArray[np.generic]) -> NDArray[np.generic]:
+    def from_chebyshev(self, coefficients: NDArray[Any]) -> NDArray[Any]:
         """Invert `to_chebyshev` for coefficients that satisfy the conditions (the last ones are not read)."""
         result = np.array(coefficients[: self.size])
         for n in range(self.size):

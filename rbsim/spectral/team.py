@@ -1,4 +1,4 @@
-"""A team of threads that shares columns or rows; the compiled loops and transforms release the interpreter."""
+"""A team of threads that shares columns or rows; loops and transforms release the interpreter."""
 
 from __future__ import annotations
 
