@@ -14,7 +14,7 @@ from rbsim.spectral.ultraspherical import SLOPE
 def values_at(modes: int, z: float) -> Array:
     """Return T_n(1 − 2z) for n < modes, shape (modes,)."""
     angle = np.arccos(np.clip(1.0 - 2.0 * z, -1.0, 1.0))
-    return np.cos(np.arange(modes) * angle)
+    return np.asarray(np.cos(np.arange(modes) * angle))
 
 
 def slopes_at(modes: int, z: float) -> Array:

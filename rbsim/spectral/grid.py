@@ -62,7 +62,7 @@ class Grid:
     @cached_property
     def angles(self) -> Array:
         """Angles of the Gauss points, shape (nz,): z = (1 − cos angle)/2."""
-        return np.pi * (np.arange(self.nz) + 0.5) / self.nz
+        return np.asarray(np.pi * (np.arange(self.nz) + 0.5) / self.nz, dtype=np.float64)
 
     @cached_property
     def z(self) -> Array:

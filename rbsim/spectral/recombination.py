@@ -45,7 +45,7 @@ def _derivative_at_plate(degree: int, order: int, at_top: bool) -> Fraction:
     for j in range(order):
         value *= Fraction(degree * degree - j * j, 2 * j + 1)
     sign = (-1) ** (degree + order) if at_top else 1
-    return value * sign * (-2) ** order
+    return value * Fraction(sign * (-2) ** order)
 
 
 @dataclass(frozen=True, eq=False)
@@ -66,12 +66,12 @@ class Recombination:
     @property
     def size(self) -> int:
         """Number of trial functions."""
-        return self.stencil.shape[1]
+        return int(self.stencil.shape[1])
 
     @property
     def conditions(self) -> int:
         """Number of plate conditions."""
-        return self.stencil.shape[0] - 1
+        return int(self.stencil.shape[0]) - 1
 
     @property
     def offsets(self) -> range:

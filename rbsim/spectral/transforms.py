@@ -43,6 +43,9 @@ class Transforms(Protocol):
     def rows_to_columns(self, stack: ComplexArray, start: int, stop: int) -> None:
         """Transform columns from heights to coefficients that want `product_scale`."""
 
+    def at_heights(self, stack: ComplexArray) -> ComplexArray:
+        """Return Fourier coefficients at all heights, shape (fields, nz, modes_x), in storage of their own."""
+
 
 def coefficient_scale(grid: Grid) -> Array:
     """Factors from Chebyshev coefficients to stack rows, shape (nz,)."""
@@ -89,6 +92,12 @@ class ScipyTransforms:
         """Transform columns from heights to coefficients."""
         stack[:, :, start:stop] = _cosine(self._rows[: len(stack), :, start:stop], 2)
 
+    def at_heights(self, stack: ComplexArray) -> ComplexArray:
+        """Return Fourier coefficients at all heights."""
+        modes = stack.shape[2]
+        self.columns_to_rows(stack, 0, modes)
+        return self._rows[: len(stack), :, :modes].copy()
+
 
 def _cosine(columns: ComplexArray, kind: int) -> ComplexArray:
     pairs = np.ascontiguousarray(columns).view(np.float64)
@@ -129,6 +138,12 @@ class DuccTransforms:
         cut = slice(2 * start, 2 * stop)
         pairs = stack.view(np.float64)[:, :, cut]
         self._fft.dct(self._pairs[: len(stack), :, cut], 2, axes=(1,), out=pairs)
+
+    def at_heights(self, stack: ComplexArray) -> ComplexArray:
+        """Return Fourier coefficients at all heights."""
+        modes = stack.shape[2]
+        self.columns_to_rows(stack, 0, modes)
+        return self._rows[: len(stack), :, :modes].copy()
 
 
 def choose_threads(grid: Grid) -> int:

@@ -1,0 +1,1 @@
+"""What a state tells: heat transport by several definitions, budgets, layers, resolution."""

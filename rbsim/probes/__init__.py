@@ -1,0 +1,1 @@
+"""Virtual thermometers: exact samples of temperature and velocity at chosen places."""
