@@ -101,7 +101,7 @@ class ScipyTransforms:
 
 def _cosine(columns: ComplexArray, kind: int) -> ComplexArray:
     pairs = np.ascontiguousarray(columns).view(np.float64)
-    return np.asarray(scipy.fft.dct(pairs, type=kind, axis=1, overwrite_x=True)).view(np.complex128)
+    return np.asarray(scipy.fft.dct(pairs, type=kind, axis=1)).view(np.complex128)
 
 
 class DuccTransforms:
