@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from math import sqrt
+from math import inf, isinf, sqrt
 from typing import Literal
 
 from rbsim.spectral.recombination import PlateCondition
@@ -13,15 +13,19 @@ Motion = Literal["no-slip", "free-slip"]
 
 @dataclass(frozen=True)
 class Plate:
-    """A horizontal plate at fixed temperature.
+    """A horizontal plate.
 
     Parameters
     ----------
     motion : {"no-slip", "free-slip"}
         No-slip: both velocities vanish. Free-slip: vertical velocity and shear stress vanish.
+    biot : float
+        Biot number of the plate, its conductance over that of the layer at rest: infinite at fixed
+        temperature, 0 at fixed heat flux, positive and finite in between.
     """
 
     motion: Motion = "no-slip"
+    biot: float = inf
 
 
 @dataclass(frozen=True)
@@ -57,12 +61,19 @@ class Cell:
     @property
     def temperature_conditions(self) -> tuple[PlateCondition, ...]:
         """Conditions on the departure θ from the conduction profile."""
-        return (PlateCondition(False, (1.0,)), PlateCondition(True, (1.0,)))
+        return (_heat_condition(self.bottom, False), _heat_condition(self.top, True))
 
     @property
     def flow_conditions(self) -> tuple[PlateCondition, ...]:
         """Conditions on the streamfunction ψ; ψ = 0 on both plates means no net through-flow."""
         return (*_flow_conditions(self.bottom, False), *_flow_conditions(self.top, True))
+
+
+def _heat_condition(plate: Plate, at_top: bool) -> PlateCondition:
+    """θ = 0 at fixed temperature, else ∂θ/∂n = −Bi θ along the outward normal."""
+    if isinf(plate.biot):
+        return PlateCondition(at_top, (1.0,))
+    return PlateCondition(at_top, (plate.biot, 1.0 if at_top else -1.0))
 
 
 def _flow_conditions(plate: Plate, at_top: bool) -> tuple[PlateCondition, PlateCondition]:

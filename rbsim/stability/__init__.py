@@ -1,0 +1,1 @@
+"""Onset of convection, growth of disturbances, steady rolls, their branches and their stability."""
