@@ -23,7 +23,7 @@ from rbsim.spectral.transforms import Transforms, product_scale
 from rbsim.spectral.ultraspherical import derivative, diagonal_table, recombining
 
 #: Values and products of one block of rows, which should stay in the second-level cache.
-BLOCK_BYTES = 1 << 20
+BLOCK_BYTES = 1 << 19
 
 
 class BoussinesqEquations:
@@ -61,7 +61,8 @@ class BoussinesqEquations:
         self._bases = (warm.stencil, warm.stride, flow.stencil, flow.stride)
         self._stack = np.zeros((3, grid.nz, grid.modes_x), dtype=np.complex128)
         self._products = np.empty((4, grid.nz, grid.modes_x), dtype=np.complex128)
-        self._rates = np.empty(grid.nz)
+        self._rates = np.empty((team.threads, grid.nx))
+        self._waves = (grid.wavenumbers, self.flow.paired_squares, np.empty(2 * grid.modes_x))
         self._inverse_spacings = np.append(1.0 / grid.spacing_z, grid.nx / grid.width)
         self._block = max(1, min(grid.nz, BLOCK_BYTES // (7 * 8 * grid.nx)))
         self._scratch = [
@@ -112,18 +113,19 @@ class BoussinesqEquations:
 
     def _multiply_share(self, start: int, stop: int, member: int) -> None:
         values, products = self._scratch[member]
+        rates = self._rates[member]
+        rates[:] = 0.0
         for first in range(start, stop, self._block):
             last = min(stop, first + self._block)
-            fields, formed = values[:, : last - first], products[:, : last - first]
-            self.transforms.rows_to_values(first, last, fields)
-            kernels.multiply_fields(fields, self._inverse_spacings, formed, self._rates, first)
-            self.transforms.values_to_rows(first, last, formed)
+            self.transforms.rows_to_values(first, last, values[:, : last - first])
+            kernels.multiply_fields(values, self._inverse_spacings, products, rates, first, last)
+            self.transforms.values_to_rows(first, last, products[:, : last - first])
 
     def unload_columns(self, terms: tuple[ComplexArray, ComplexArray], start: int, stop: int) -> None:
         """Project the products of some wavenumbers, and buoyancy and lift, on the test functions."""
         self.transforms.rows_to_columns(self._products, start, stop)
         spectra = (self._stack, self._products)
-        kernels.assemble(spectra, self._tables, self.grid.wavenumbers, terms, start, stop)
+        kernels.assemble(spectra, self._tables, self._waves, terms, start, stop)
 
     def fields(self, state: State) -> tuple[Array, Array, Array]:
         """Return horizontal and vertical velocity and temperature on the grid, each of shape (nz, nx)."""
@@ -178,7 +180,7 @@ def _projection_tables(grid: Grid, order: int, rows: int) -> tuple[Array, ...]:
     scale = sparse.diags_array(product_scale(grid)[:modes])
     kinds = [(derivative(0, modes, order), range(0, 2 * order + 1, 2))]
     if order == 4:
-        kinds.append((derivative(2, modes, order), range(2, 2 * order - 1, 2)))
+        kinds.append((derivative(2, modes, order), range(0, 2 * order + 1, 2)))
     kinds.append((-1.0 * derivative(1, modes, order), range(1, 2 * order, 2)))
     return tuple(
         np.ascontiguousarray(diagonal_table(sparse.csr_array(op @ scale), offsets, rows))

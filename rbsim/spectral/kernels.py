@@ -64,11 +64,36 @@ def _eliminate(row, above, place, lower, upper):
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
-def _subtract(weights, source, target):
-    """Subtract weights·source, the weights real and the rows pairs of reals."""
-    for m in range(weights.size):
-        target[2 * m] -= weights[m] * source[2 * m]
-        target[2 * m + 1] -= weights[m] * source[2 * m + 1]
+def _subtract(w, x, y):
+    """Subtract w·x from y, the weights real and the other rows pairs of reals."""
+    for m in range(w.size):
+        y[2 * m] -= w[m] * x[2 * m]
+        y[2 * m + 1] -= w[m] * x[2 * m + 1]
+
+
+@njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
+def _subtract_two(w0, x0, w1, x1, y):
+    for m in range(w0.size):
+        y[2 * m] -= w0[m] * x0[2 * m] + w1[m] * x1[2 * m]
+        y[2 * m + 1] -= w0[m] * x0[2 * m + 1] + w1[m] * x1[2 * m + 1]
+
+
+@njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
+def _subtract_bands(factors, place, values, row, step, count, target, start, stop):
+    """Subtract `count` diagonals from `place` on, times the rows from `row` on in steps of `step`."""
+    lo, hi = 2 * start, 2 * stop
+    done = 0
+    while count - done >= 2:
+        _subtract_two(
+            factors[place + done, start:stop],
+            values[row + done * step, lo:hi],
+            factors[place + done + 1, start:stop],
+            values[row + (done + 1) * step, lo:hi],
+            target,
+        )
+        done += 2
+    if done < count:
+        _subtract(factors[place + done, start:stop], values[row + done * step, lo:hi], target)
 
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
@@ -92,16 +117,14 @@ def substitute(factors, lower, stride, values, total, start, stop):
     pairs, sums = values.view(np.float64), total.view(np.float64)
     lo, hi = 2 * start, 2 * stop
     for n in range(rows):
-        for i in range(lower, 0, -1):
-            above = n - i * stride
-            if above >= 0:
-                _subtract(factors[n, lower - i, start:stop], pairs[above, lo:hi], pairs[n, lo:hi])
+        count = min(lower, n // stride)
+        first = n - count * stride
+        _subtract_bands(factors[n], lower - count, pairs, first, stride, count, pairs[n, lo:hi], start, stop)
     for n in range(rows - 1, -1, -1):
-        for j in range(1, diagonals - lower):
-            below = n + j * stride
-            if below < rows:
-                _subtract(factors[n, lower + j, start:stop], pairs[below, lo:hi], pairs[n, lo:hi])
-        pivot, row, out = factors[n, lower, start:stop], pairs[n, lo:hi], sums[n, lo:hi]
+        count = min(diagonals - lower - 1, (rows - 1 - n) // stride)
+        row = pairs[n, lo:hi]
+        _subtract_bands(factors[n], lower + 1, pairs, n + stride, stride, count, row, start, stop)
+        pivot, out = factors[n, lower, start:stop], sums[n, lo:hi]
         for m in range(pivot.size):
             row[2 * m] *= pivot[m]
             row[2 * m + 1] *= pivot[m]
@@ -141,10 +164,37 @@ def combine(bands, squares, lower, stride, weights, operands, result, start, sto
         out, a, b = results[n, lo:hi], ones[n, lo:hi], twos[n, lo:hi]
         for q in range(out.size):
             out[q] = w1 * a[q] + w2 * b[q]
-        for d in range(diagonals):
-            other = n + (d - lower) * stride
-            if 0 <= other < rows:
-                b0, b1, b2 = outer * bands[0, d, n], outer * bands[1, d, n], outer * bands[2, d, n]
-                row = pairs[other, lo:hi]
-                for q in range(out.size):
-                    out[q] += (b0 + square[q] * (b1 + square[q] * b2)) * row[q]
+        first = max(0, lower - n // stride)
+        last = min(diagonals, lower + (rows - 1 - n) // stride + 1)
+        while last - first >= 2:
+            x, y = n + (first - lower) * stride, n + (first + 1 - lower) * stride
+            _add_curved_two(
+                out,
+                square,
+                bands[:, first, n],
+                pairs[x, lo:hi],
+                bands[:, first + 1, n],
+                pairs[y, lo:hi],
+                outer,
+            )
+            first += 2
+        if first < last:
+            x = n + (first - lower) * stride
+            _add_curved(out, square, bands[:, first, n], pairs[x, lo:hi], outer)
+
+
+@njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
+def _add_curved(out, square, weights, row, outer):
+    """Add outer·(weights[0] + weights[1] k² + weights[2] k⁴)·row."""
+    a0, a1, a2 = outer * weights[0], outer * weights[1], outer * weights[2]
+    for q in range(out.size):
+        out[q] += (a0 + square[q] * (a1 + square[q] * a2)) * row[q]
+
+
+@njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
+def _add_curved_two(out, square, weights, row, others, next_row, outer):
+    a0, a1, a2 = outer * weights[0], outer * weights[1], outer * weights[2]
+    b0, b1, b2 = outer * others[0], outer * others[1], outer * others[2]
+    for q in range(out.size):
+        s = square[q]
+        out[q] += (a0 + s * (a1 + s * a2)) * row[q] + (b0 + s * (b1 + s * b2)) * next_row[q]

@@ -88,16 +88,15 @@ def test_synthesis_fills_the_stack_of_velocities_and_temperature(plates: tuple[s
 
 def test_products_and_courant_rates_equal_plain_ones() -> None:
     rng = np.random.default_rng(13)
-    values, inverse = rng.standard_normal((3, 5, 33)), rng.uniform(1, 9, 13)
-    products, rates = np.empty((4, 5, 33)), np.full(12, -1.0)
-    kernels.multiply_fields(values, inverse, products, rates, 4)
-    u, w, t = values
+    values, inverse = rng.standard_normal((3, 6, 33)), rng.uniform(1, 9, 13)
+    products, rates = np.full((4, 6, 33), -1.0), np.zeros(33)
+    kernels.multiply_fields(values, inverse, products, rates, 4, 9)
+    u, w, t = values[:, :5]
     expected = np.array([u * w, w**2 - u**2, u * t, w * t])
-    np.testing.assert_allclose(products, expected, rtol=1e-12, atol=1e-14)
-    np.testing.assert_allclose(
-        rates[4:9], np.max(np.abs(u) * inverse[12] + np.abs(w) * inverse[4:9, None], axis=1), rtol=1e-13
-    )
-    assert np.all(rates[:4] == -1) and np.all(rates[9:] == -1)
+    np.testing.assert_allclose(products[:, :5], expected, rtol=1e-12, atol=1e-14)
+    np.testing.assert_array_equal(products[:, 5], -1.0)
+    plain = np.max(np.abs(u) * inverse[12] + np.abs(w) * inverse[4:9, None], axis=0)
+    np.testing.assert_allclose(rates, plain, rtol=1e-13)
 
 
 @pytest.mark.parametrize("plates", PLATES)

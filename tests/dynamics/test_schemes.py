@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 from fractions import Fraction
+from itertools import pairwise
 
 import numpy as np
 import pytest
@@ -40,7 +41,7 @@ def _orders(equations: BoussinesqEquations, start: State, end: float, steps: tup
     """Observed orders between successive step numbers, against a run with many more steps."""
     truth = _run(equations, start, end, 8 * steps[-1])
     errors = [np.abs(_run(equations, start, end, n).theta - truth.theta).max() for n in steps]
-    return [float(np.log2(a / b)) for a, b in zip(errors, errors[1:], strict=False)]
+    return [float(np.log2(a / b)) for a, b in pairwise(errors)]
 
 
 def test_tables_that_do_not_add_up_are_refused() -> None:
