@@ -64,9 +64,9 @@ class BoussinesqEquations:
         self._rates = np.empty((team.threads, grid.nx))
         self._waves = (grid.wavenumbers, self.flow.paired_squares, np.empty(2 * grid.modes_x))
         self._inverse_spacings = np.append(1.0 / grid.spacing_z, grid.nx / grid.width)
-        self._block = max(1, min(grid.nz, BLOCK_BYTES // (7 * 8 * grid.nx)))
+        self.block = max(1, min(grid.nz, BLOCK_BYTES // (7 * 8 * grid.nx)))
         self._scratch = [
-            (np.empty((3, self._block, grid.nx)), np.empty((4, self._block, grid.nx)))
+            (np.empty((3, self.block, grid.nx)), np.empty((4, self.block, grid.nx)))
             for _ in range(team.threads)
         ]
 
@@ -115,8 +115,8 @@ class BoussinesqEquations:
         values, products = self._scratch[member]
         rates = self._rates[member]
         rates[:] = 0.0
-        for first in range(start, stop, self._block):
-            last = min(stop, first + self._block)
+        for first in range(start, stop, self.block):
+            last = min(stop, first + self.block)
             self.transforms.rows_to_values(first, last, values[:, : last - first])
             kernels.multiply_fields(values, self._inverse_spacings, products, rates, first, last)
             self.transforms.values_to_rows(first, last, products[:, : last - first])

@@ -83,7 +83,7 @@ def multiply_fields(values, inverse_spacings, products, rates, first, last):
     rates : ndarray, shape (nx,)
         Raised to the largest |u|/Δx + |w|/Δz of each vertical line.
     first, last : int
-        Heights of the first row and behind the last one (whole arrays are passed, cuts would lose contiguity).
+        Heights of the first row and behind the last one (the arrays come whole: cuts are not contiguous).
     """
     across = inverse_spacings[inverse_spacings.size - 1]
     for j in range(last - first):
