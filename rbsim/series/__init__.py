@@ -1,0 +1,1 @@
+"""Numbers about records: averages with errors, spectra, distributions, agreement tests."""
