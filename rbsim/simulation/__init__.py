@@ -1,0 +1,1 @@
+"""One run: the only room where case, dynamics, diagnostics, thermometers and files meet."""

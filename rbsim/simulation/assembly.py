@@ -1,0 +1,100 @@
+"""From a case to the objects that march: cell, grid, equations, step control, start."""
+
+from __future__ import annotations
+
+from rbsim.config.schema import Case
+from rbsim.diagnostics.resolution import recommended_points
+from rbsim.dynamics.cell import Cell, Plate
+from rbsim.dynamics.equations import BoussinesqEquations
+from rbsim.dynamics.starts import conduction_with_noise, single_roll
+from rbsim.dynamics.state import State
+from rbsim.dynamics.stepsize import Agenda, StepControl
+from rbsim.errors import ConfigError
+from rbsim.probes.thermometer import Thermometer
+from rbsim.spectral.grid import Grid
+from rbsim.spectral.team import Team
+from rbsim.spectral.transforms import choose_threads, choose_transforms
+
+#: Kinds of appointments besides the readings of thermometers.
+HISTORY, PROFILES, FIELD = "history", "profiles", "field"
+
+
+def cell_of(case: Case) -> Cell:
+    """Return the ideal cell of a case."""
+    return Cell(
+        rayleigh=case.numbers.rayleigh,
+        prandtl=case.numbers.prandtl,
+        width=case.cell.aspect_ratio,
+        bottom=Plate(case.plates.bottom.motion),
+        top=Plate(case.plates.top.motion),
+    )
+
+
+def grid_of(case: Case) -> Grid:
+    """Return the grid of a case, the recommended one for `grid = "auto"`."""
+    if isinstance(case.grid, str):
+        nx, nz = recommended_points(cell_of(case))
+    else:
+        nx, nz = case.grid.nx, case.grid.nz
+    return Grid(nx, nz, case.cell.aspect_ratio)
+
+
+def equations_of(case: Case, threads: int | None = None, library: str | None = None) -> BoussinesqEquations:
+    """Return the discretised equations of a case.
+
+    Parameters
+    ----------
+    case : Case
+        What was asked for.
+    threads : int, optional
+        Number of threads instead of the one chosen by grid size.
+    library : {"scipy.fft", "ducc0.fft"}, optional
+        Transform library instead of the fastest one installed.
+    """
+    grid = grid_of(case)
+    team = Team(threads or choose_threads(grid))
+    return BoussinesqEquations(cell_of(case), grid, choose_transforms(grid, library), team)
+
+
+def thermometers_of(case: Case) -> tuple[Thermometer, ...]:
+    """Return the thermometers of a case."""
+    return tuple(Thermometer(t.name, t.x, t.z, t.interval) for t in case.thermometers)
+
+
+def agenda_of(case: Case, end: float) -> Agenda:
+    """Return the appointments of a case: history, profiles, fields and one for each sampling interval."""
+    intervals = {HISTORY: case.output.history_interval, PROFILES: case.output.profile_interval}
+    if case.output.field_interval > 0:
+        intervals[FIELD] = case.output.field_interval
+    for thermometer in case.thermometers:
+        intervals[reading_name(thermometer.interval)] = thermometer.interval
+    return Agenda(intervals, end)
+
+
+def reading_name(interval: float) -> str:
+    """Return the name of the appointment at which thermometers of this interval are read."""
+    return f"readings every {interval!r}"
+
+
+def control_of(case: Case) -> StepControl:
+    """Return the limits of the step size."""
+    if case.time.step is not None:
+        return StepControl(courant=case.time.courant, largest=case.time.step, fixed=True)
+    return StepControl(courant=case.time.courant)
+
+
+def fresh_state(case: Case, equations: BoussinesqEquations) -> State:
+    """Return the initial state of a case that does not start from a file.
+
+    Raises
+    ------
+    ConfigError
+        If the grid is too coarse for the wanted number of rolls.
+    """
+    start = case.start
+    if start.kind == "roll":
+        try:
+            return single_roll(equations, start.pairs, start.amplitude)
+        except ValueError as error:
+            raise ConfigError(f"case: key 'start.pairs': {error}; ask for fewer pairs or a finer grid") from error
+    return conduction_with_noise(equations, start.amplitude, start.seed)
