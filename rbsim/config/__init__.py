@@ -1,0 +1,1 @@
+"""What was asked for: schema, rules across fields, loading, overrides, writing."""
