@@ -15,7 +15,6 @@ from pydantic import BaseModel, ValidationError
 from rbsim.config.schema import Case
 from rbsim.errors import ConfigError
 
-
 #: What the checker inserts into places to tell the two kinds of grid apart.
 GRID_TAGS = ("word", "points")
 
@@ -83,7 +82,7 @@ def build_case(
     rayleigh, prandtl, aspect_ratio, end : float
         Pure numbers, period in heights, last time in free-fall times.
     **sections
-        Further sections as in TOML, for example ``grid={"nx": 256, "nz": 128}`` or ``start={"kind": "roll"}``.
+        Further sections as in TOML, for example ``grid={"nx": 256, "nz": 128}``.
 
     Raises
     ------

@@ -60,9 +60,9 @@ def raise_to_heights(equations: BoussinesqEquations, state: State) -> Heights:
     theta = equations.temperature_basis.to_chebyshev(state.theta)
     psi = equations.flow_basis.to_chebyshev(state.psi)
     u = -differentiate(psi)
-    first = _transform(equations, [u, 1j * wavenumbers * psi, theta])
-    second = _transform(equations, [differentiate(u), differentiate(theta)])
-    return Heights(*first, *second, wavenumbers)
+    along, upward, warm = _transform(equations, [u, 1j * wavenumbers * psi, theta])
+    shear, gradient = _transform(equations, [differentiate(u), differentiate(theta)])
+    return Heights(along, upward, warm, shear, gradient, wavenumbers)
 
 
 def _transform(equations: BoussinesqEquations, series: list[ComplexArray]) -> ComplexArray:

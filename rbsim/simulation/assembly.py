@@ -16,7 +16,7 @@ from rbsim.spectral.team import Team
 from rbsim.spectral.transforms import choose_threads, choose_transforms
 
 #: Kinds of appointments besides the readings of thermometers.
-HISTORY, PROFILES, FIELD = "history", "profiles", "field"
+HISTORY_TIMES, PROFILE_TIMES, FIELD_TIMES = "history", "profiles", "field"
 
 
 def cell_of(case: Case) -> Cell:
@@ -63,9 +63,9 @@ def thermometers_of(case: Case) -> tuple[Thermometer, ...]:
 
 def agenda_of(case: Case, end: float) -> Agenda:
     """Return the appointments of a case: history, profiles, fields and one for each sampling interval."""
-    intervals = {HISTORY: case.output.history_interval, PROFILES: case.output.profile_interval}
+    intervals = {HISTORY_TIMES: case.output.history_interval, PROFILE_TIMES: case.output.profile_interval}
     if case.output.field_interval > 0:
-        intervals[FIELD] = case.output.field_interval
+        intervals[FIELD_TIMES] = case.output.field_interval
     for thermometer in case.thermometers:
         intervals[reading_name(thermometer.interval)] = thermometer.interval
     return Agenda(intervals, end)
@@ -96,5 +96,7 @@ def fresh_state(case: Case, equations: BoussinesqEquations) -> State:
         try:
             return single_roll(equations, start.pairs, start.amplitude)
         except ValueError as error:
-            raise ConfigError(f"case: key 'start.pairs': {error}; ask for fewer pairs or a finer grid") from error
+            raise ConfigError(
+                f"case: key 'start.pairs': {error}; ask for fewer pairs or a finer grid"
+            ) from error
     return conduction_with_noise(equations, start.amplitude, start.seed)

@@ -180,7 +180,9 @@ def judge(balanced: list[float]) -> Agreement:
     if spread <= AGREES:
         return Agreement(spread, "agree", "the definitions agree; the error bars say how long to average")
     if spread <= DOUBTFUL:
-        return Agreement(spread, "doubtful", "use a grid about 1.3 times finer in both directions and compare")
+        return Agreement(
+            spread, "doubtful", "use a grid about 1.3 times finer in both directions and compare"
+        )
     return Agreement(spread, "disagree", "the grid is too coarse for these numbers; do not use them")
 
 

@@ -1,0 +1,1 @@
+"""Everything on disk: layout, run file, snapshots, checkpoints, lock, reader."""
