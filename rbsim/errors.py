@@ -74,7 +74,7 @@ class DivergedError(RbsimError):
         return type(self), (self.message, self.time, self.step_size)
 
 
-class InterruptedRun(RbsimError):
+class InterruptedRunError(RbsimError):
     """A signal stopped a run after its checkpoint was written; it can be resumed."""
 
     exit_code = 5

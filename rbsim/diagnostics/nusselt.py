@@ -1,6 +1,6 @@
 """The Nusselt number by six definitions, each with the unsteady term that ties it to the volume mean.
 
-For a cell between plates of fixed temperature, with κ = (Ra Pr)^(−1/2) and free-fall units, the equations give
+Between plates of fixed temperature, with κ = (Ra Pr)^(−1/2) and in free-fall units, the equations give
 at every moment (Shraiman & Siggia 1990, Phys. Rev. A 42, 3650; unsteady terms re-derived)
 
     Nu_volume = Nu_X + storage_X    for X = bottom, top, midplane, thermal, kinetic.

@@ -27,7 +27,7 @@ def expected_nusselt(cell: Cell) -> float:
     """
     no_slip = cell.bottom.motion == cell.top.motion == "no-slip"
     law = 0.138 * cell.rayleigh**0.285 if no_slip else 0.2723 * cell.rayleigh ** (1.0 / 3.0)
-    return max(1.0, law)
+    return float(max(1.0, law))
 
 
 def smallest_scale(cell: Cell, nusselt: float) -> float:
@@ -36,7 +36,7 @@ def smallest_scale(cell: Cell, nusselt: float) -> float:
     η = [Pr²/((Nu − 1) Ra)]^¼ and η/√Pr (Grötzbach 1983, J. Comput. Phys. 49, 241; value from memory).
     """
     kolmogorov = (cell.prandtl**2 / (max(nusselt - 1.0, 1e-3) * cell.rayleigh)) ** 0.25
-    return kolmogorov / max(1.0, sqrt(cell.prandtl))
+    return float(kolmogorov / max(1.0, sqrt(cell.prandtl)))
 
 
 def nodes_in_layers(cell: Cell, nusselt: float) -> float:

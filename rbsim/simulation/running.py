@@ -16,7 +16,7 @@ from rbsim.dynamics.march import FinishedStep, March
 from rbsim.dynamics.state import State
 from rbsim.dynamics.stepper import Stepper
 from rbsim.dynamics.stepsize import Stride
-from rbsim.errors import ConfigError, DivergedError, InterruptedRun, RunFolderError
+from rbsim.errors import ConfigError, DivergedError, InterruptedRunError, RunFolderError
 from rbsim.files.atomic import write_text
 from rbsim.files.checkpoint import read_newest, write_checkpoint
 from rbsim.files.layout import RunFolder, create_run_folder, open_run_folder
@@ -68,7 +68,7 @@ class RunOptions:
     watch : callable, optional
         Called with a `Progress` after every step.
     should_stop : callable, optional
-        Asked after every step; True ends the run with a checkpoint and `InterruptedRun`.
+        Asked after every step; True ends the run with a checkpoint and `InterruptedRunError`.
     notice : callable, optional
         Called with one line of text when something is worth saying.
     """
@@ -105,7 +105,7 @@ def simulate(case: Case, folder: str | Path, options: RunOptions | None = None) 
         The folder is in use or cannot be written.
     DivergedError
         The state stopped being finite; the last good checkpoint is named.
-    InterruptedRun
+    InterruptedRunError
         `should_stop` said so.
     """
     options = options or RunOptions()
@@ -143,7 +143,7 @@ def resume(folder: str | Path, until: float | None = None, options: RunOptions |
     ------
     ConfigError
         The new end lies before the present time.
-    RunFolderError, DivergedError, InterruptedRun
+    RunFolderError, DivergedError, InterruptedRunError
         As in `simulate`.
     """
     options = options or RunOptions()
@@ -231,7 +231,7 @@ class _Run:
         if stopping or time.monotonic() - self._saved_at > self._case.output.checkpoint_seconds:
             self.save(state, stride)
         if stopping and "end" not in step.due:
-            raise InterruptedRun(
+            raise InterruptedRunError(
                 f"{self._folder.path}: stopped at time {state.time:.6g} after a checkpoint; "
                 f"go on with `rbsim resume {self._folder.path}`"
             )
@@ -264,6 +264,6 @@ def _refuse_other_shape(folder: RunFolder, equations: BoussinesqEquations, state
     wanted = equations.new_state()
     if (wanted.theta.shape, wanted.psi.shape) != (state.theta.shape, state.psi.shape):
         raise RunFolderError(
-            f"{folder.path}: the checkpoint belongs to another grid than case.toml; restore case.toml, or start "
-            "a new run with start.kind = 'state'"
+            f"{folder.path}: the checkpoint belongs to another grid than case.toml; restore case.toml, or "
+            "start a new run with start.kind = 'state'"
         )

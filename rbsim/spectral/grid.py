@@ -52,7 +52,7 @@ class Grid:
     @cached_property
     def wavenumbers(self) -> Array:
         """Horizontal wavenumbers 2πm/Γ of the retained modes, shape (modes_x,), in 1/H."""
-        return 2.0 * np.pi * np.arange(self.modes_x) / self.width
+        return np.asarray(2.0 * np.pi * np.arange(self.modes_x) / self.width, dtype=np.float64)
 
     @cached_property
     def x(self) -> Array:

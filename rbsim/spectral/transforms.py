@@ -44,7 +44,7 @@ class Transforms(Protocol):
         """Transform columns from heights to coefficients that want `product_scale`."""
 
     def at_heights(self, stack: ComplexArray) -> ComplexArray:
-        """Return Fourier coefficients at all heights, shape (fields, nz, modes_x), in storage of their own."""
+        """Return Fourier coefficients at all heights, shape (fields, nz, modes_x), in their own storage."""
 
 
 def coefficient_scale(grid: Grid) -> Array:

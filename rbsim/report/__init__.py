@@ -1,0 +1,1 @@
+"""Figures: from arrays to pictures."""
