@@ -35,9 +35,10 @@ def mean_with_error(values: npt.ArrayLike, spacing: float) -> Estimate:
     Returns
     -------
     Estimate
-        By `initial_monotone_sequence`. A record of fewer than ten effective samples gets an infinite
-        interval, unless it settles to a constant, where the distance still to go bounds the error. A
-        constant record has the interval 0.
+        By `overlapping_batch_means`, the best calibrated of the four over white, autoregressive,
+        oscillating and smooth records (measured here). A record of fewer than ten effective samples gets an
+        infinite interval, unless it settles to a constant, where the distance still to go bounds the error.
+        A constant record has the interval 0.
 
     Raises
     ------
@@ -45,7 +46,7 @@ def mean_with_error(values: npt.ArrayLike, spacing: float) -> Estimate:
         If the record is not one-dimensional and finite with at least two samples, or the spacing is not
         positive.
     """
-    estimate = initial_monotone_sequence(values, spacing)
+    estimate = overlapping_batch_means(values, spacing)
     if math.isfinite(estimate.ci95):
         return estimate
     bound = settled_half_width(checked_record(values))
@@ -92,8 +93,8 @@ def batch_means(values: npt.ArrayLike, spacing: float) -> Estimate:
 
     The number of batches b is that with ten effective samples each, between 5 and 30: more batches gain
     little (Schmeiser 1982, Oper. Res. 30, 556), fewer samples leave neighbouring batches correlated. Batch
-    edges may fall between samples, so that the whole record counts. Parameters, result and errors as in
-    `mean_with_error`.
+    edges may fall between samples, so that the whole record counts. What batches still miss of the variance
+    is restored by `seen_share`. Parameters, result and errors as in `mean_with_error`.
     """
     return _estimate(values, spacing, _from_batches, "batch means (Schmeiser 1982)")
 
@@ -116,6 +117,36 @@ def batch_count(memory: Memory) -> int:
     return min(max(wanted, FEWEST_BATCHES), MOST_BATCHES, memory.samples)
 
 
+def seen_share(length: float, integral: float) -> float:
+    """Return the share of the long-run variance that means over a finite length show.
+
+    1 − (τ/L)(1 − exp(−L/τ)) for the integral time τ: exact for exponential correlation (Lenschow, Mann &
+    Kristensen 1994, J. Atmos. Oceanic Technol. 11, 661), to first order in τ/L for any other.
+    """
+    return 1.0 + (integral / length) * math.expm1(-length / integral)
+
+
+def intermittent_freedom(freedom: float, values: Array, effective: float) -> float:
+    """Return the degrees of freedom of a variance, lowered for a record of rare strong events.
+
+    The relative variance of a variance is 2/ν for Gaussian values and grows by (F − 3)/n for the flatness F
+    of the values (Satterthwaite 1946, Biometrics Bull. 2, 110, for the degrees of freedom of such a
+    variance).
+
+    Parameters
+    ----------
+    freedom : float
+        Degrees of freedom ν for Gaussian values.
+    values : ndarray, shape (n,)
+        Record of zero mean.
+    effective : float
+        Number of effective samples.
+    """
+    square = values**2
+    excess = max(float(np.mean(square**2)) / float(np.mean(square)) ** 2 - 3.0, 0.0)
+    return max(1.0 / (1.0 / freedom + 0.5 * excess / effective), 1.0)
+
+
 def _estimate(
     values: npt.ArrayLike, spacing: float, finding: Callable[[Array, Memory], _Finding], method: str
 ) -> Estimate:
@@ -131,6 +162,7 @@ def _estimate(
     effective = memory.variance / variance
     error = rest.scale * math.sqrt(variance)
     enough = min(effective, memory.effective_samples, n) >= FEWEST_EFFECTIVE_SAMPLES
+    freedom = intermittent_freedom(freedom, rest.values, min(effective, memory.effective_samples, n))
     width = half_width95(error, freedom) if enough else math.inf
     return Estimate(rest.mean, error, width, 0.5 * step * n / effective, effective, n, freedom, method)
 
@@ -146,7 +178,8 @@ def _from_batches(rest: Array, memory: Memory) -> _Finding:
     sums = np.concatenate(([0.0], np.cumsum(rest)))
     edges = np.linspace(0.0, rest.size, count + 1)
     means = np.diff(np.interp(edges, np.arange(rest.size + 1), sums)) * (count / rest.size)
-    return _positive(float(means.var(ddof=1)) / count, memory), count - 1.0
+    variance = float(means.var(ddof=1)) / count / seen_share(rest.size / count, memory.integral)
+    return _positive(variance, memory), count - 1.0
 
 
 def _from_overlapping_batches(rest: Array, memory: Memory) -> _Finding:
@@ -156,7 +189,7 @@ def _from_overlapping_batches(rest: Array, memory: Memory) -> _Finding:
     sums = np.concatenate(([0.0], np.cumsum(rest)))
     means = (sums[length:] - sums[:-length]) / length
     variance = length * float(means @ means) / ((n - length) * (n - length + 1.0))
-    return _positive(variance, memory), 1.5 * (count - 1.0)
+    return _positive(variance / seen_share(length, memory.integral), memory), 1.5 * (count - 1.0)
 
 
 def _positive(variance: float, memory: Memory) -> float:

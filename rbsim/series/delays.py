@@ -94,7 +94,7 @@ def cross_correlation(
     -----
     Unrelated records: n var r = Σ ρ₁(j) ρ₂(j) over all lags of either sign (Bartlett 1935, J. R. Statist.
     Soc. 98, 536; 1955), each autocorrelation taken as zero beyond the window of Geyer's initial sequence.
-    The values within Σ ρ₁ρ₂ samples of one another count as one try.
+    A search over m samples counts as 1 + m/Σ ρ₁ρ₂ tries.
     """
     x, y = checked_record(first), checked_record(second)
     step = checked_spacing(spacing)
@@ -109,7 +109,7 @@ def cross_correlation(
         return CrossCorrelation(delay, np.zeros(delay.size), math.inf, float(delay.size))
     value = _lagged_products(a, b, reach)
     common = _common_memory(a, b)
-    return CrossCorrelation(delay, value, math.sqrt(common / x.size), max(delay.size / common, 1.0))
+    return CrossCorrelation(delay, value, math.sqrt(common / x.size), 1.0 + 2.0 * reach / common)
 
 
 def delay_between(first: npt.ArrayLike, second: npt.ArrayLike, spacing: float, longest_delay: float) -> Delay:

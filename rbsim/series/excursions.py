@@ -38,8 +38,8 @@ def excursion_rate(
     Returns
     -------
     Estimate
-        Per unit of the spacing. The interval is for the record's own threshold; if there is no excursion it
-        is that of the rule of three, 3 over the length.
+        Per unit of the spacing. The interval takes the threshold as known, which errs on the safe side; if
+        there is no excursion it is that of the rule of three, 3 over the length.
 
     Raises
     ------

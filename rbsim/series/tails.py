@@ -80,9 +80,10 @@ def tail_fit(values: npt.ArrayLike, spacing: float, side: str, threshold: float 
 
     Notes
     -----
-    Both models have one parameter and describe the samples beyond the threshold; errors from the mean of
-    the score over the information, as a record (Huber 1967). Which fits better: Vuong 1989, Econometrica
-    57, 307, with the error of the mean log-likelihood ratio of an autocorrelated record.
+    The mean and the rms of the record are taken as known, which errs on the safe side. Both models have one
+    parameter and describe the samples beyond the threshold; errors from the mean of the score over the
+    information, as a record (Huber 1967). Which fits better: Vuong 1989, Econometrica 57, 307, with the
+    error of the mean log-likelihood ratio of an autocorrelated record.
     """
     record, step = checked_record(values), checked_spacing(spacing)
     if side not in ("upper", "lower"):
