@@ -39,8 +39,8 @@ class ProgressLine:
             return
         if self._alive:
             text = (
-                f"t = {progress.time:.2f} of {progress.end:g}  left {_clock(progress.seconds_left)}  dt {progress.step_size:.2e}  "
-                f"Courant {progress.courant:.2f}  Nu {progress.nusselt:.3f}"
+                f"t = {progress.time:.2f} of {progress.end:g}  left {_clock(progress.seconds_left)}  "
+                f"dt {progress.step_size:.2e}  Courant {progress.courant:.2f}  Nu {progress.nusselt:.3f}"
             )
             print(f"\r{text:<90}", end="", file=sys.stderr, flush=True)
             self._drawn = True

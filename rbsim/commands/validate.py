@@ -37,9 +37,9 @@ def execute(args: argparse.Namespace) -> int:
     case = load_case(args.config, args.overrides)
     grid = grid_of(case)
     chosen = " (chosen)" if case.grid == "auto" else ""
+    numbers, points = case.numbers, f"{grid.nx} x {grid.nz}{chosen}"
     print(
-        f"valid: Ra = {case.numbers.rayleigh:g}, Pr = {case.numbers.prandtl:g}, "
-        f"Γ = {case.cell.aspect_ratio:g}, grid {grid.nx} x {grid.nz}{chosen}, {len(case.thermometers)} thermometers, "
-        f"end at {case.time.end:g} free-fall times"
+        f"valid: Ra = {numbers.rayleigh:g}, Pr = {numbers.prandtl:g}, Γ = {case.cell.aspect_ratio:g}, "
+        f"grid {points}, {len(case.thermometers)} thermometers, end at {case.time.end:g} free-fall times"
     )
     return 0

@@ -51,7 +51,6 @@ def test_six_definitions_agree_within_one_percent_over_200_free_fall_times(
         name: raw[name] + (history[f"storage_{name}"].mean() if name != "volume" else 0.0)
         for name in DEFINITIONS
     }
-    print("raw", raw, "balanced", balanced)
     values = np.array(list(balanced.values()))
     assert np.ptp(values) < 0.01 * values.mean()
     assert np.ptp(list(raw.values())) < 0.03 * values.mean()  # what 200 free-fall times leave of the storage
@@ -61,7 +60,6 @@ def test_six_definitions_agree_within_one_percent_over_200_free_fall_times(
 def test_nusselt_number_lies_within_six_percent_of_the_published_law(history: dict[str, np.ndarray]) -> None:
     law = PUBLISHED["prefactor"] * PUBLISHED["rayleigh"] ** PUBLISHED["exponent"]
     nusselt = history["nusselt_volume"].mean()
-    print("Nu", nusselt, "law", law, "roll pairs", np.unique(history["roll_pairs"], return_counts=True))
     assert nusselt == pytest.approx(law, rel=PUBLISHED["tolerance"])
     assert nusselt < 1 + 0.02634 * np.sqrt(
         PUBLISHED["rayleigh"]
