@@ -32,7 +32,7 @@ HOMES = {
     "argparse": {"commands"},
     "pydantic": {"config"},
     "ducc0": {"spectral"},
-    "numba": {"spectral", "dynamics"},
+    "numba": {"spectral", "dynamics", "stability"},
     "concurrent": {"spectral"},
 }
 

@@ -131,6 +131,6 @@ def _modes(forms: LayerForms, rayleigh: float, prandtl: float, count: int) -> li
 def _polished(rate: Array, content: Array, value: float, vector: Array) -> tuple[float, Array]:
     """One step of inverse iteration, which removes the rounding errors of the stiffest modes."""
     near = value + 1e-7 * (1.0 + abs(value))
-    better: Array = np.linalg.solve(rate - near * content, content @ vector)
-    better /= sqrt(float(better @ content @ better))
+    raw = np.linalg.solve(rate - near * content, content @ vector)
+    better = np.asarray(raw / sqrt(float(raw @ content @ raw)), dtype=np.float64)
     return float(better @ rate @ better), better

@@ -17,7 +17,7 @@ LARGEST = 2048
 
 
 def tail_sizes(state: State) -> tuple[float, float]:
-    """Return the largest |θ| coefficient among the last modes in x and in z, relative to the largest of all."""
+    """Return the largest |θ| coefficient of the last modes in x and in z, relative to the largest of all."""
     sizes = np.abs(state.theta)
     largest = float(sizes.max())
     return float(sizes[:, -TAIL:].max()) / largest, float(sizes[-TAIL:].max()) / largest

@@ -1,4 +1,4 @@
-"""Steady rolls of one pair per period, from the onset mode up to any Rayleigh number, on grids that suffice."""
+"""Steady rolls of one pair per period, from the onset mode to any Rayleigh number, on grids that suffice."""
 
 from __future__ import annotations
 
@@ -139,7 +139,7 @@ def onset_of(cell: Cell) -> MarginalMode:
 
 
 def problem_of(equations: BoussinesqEquations) -> SteadyProblem:
-    """Return the steady problem of a roll pair: even in x, and under the half turn where the plates are equal."""
+    """Return the steady problem of a roll pair: even in x, and under the half turn between equal plates."""
     cell = equations.cell
     return SteadyProblem(equations, mirror=1, half_turn=1 if cell.bottom == cell.top else 0)
 
@@ -202,7 +202,7 @@ def _next_roll(path: list[Roll], cell: Cell) -> Roll:
 
 
 def extrapolated(states: list[State], points: list[float], target: float) -> State:
-    """Return the polynomial through some states, at another value of the parameter, on the last one's grid."""
+    """Return the polynomial through some states at another parameter, on the grid of the last one."""
     last = states[-1]
     theta, psi = np.zeros_like(last.theta), np.zeros_like(last.psi)
     rows, columns = last.theta.shape[0] + 2, last.theta.shape[1]

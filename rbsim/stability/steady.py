@@ -1,8 +1,8 @@
 """Steady states of the simulator's equations: 0 = L c + N(c), by Newton's method and Krylov's.
 
 The linear systems are preconditioned by the implicit solve of one very long time step, (M − τ L)⁻¹ ≈ −(τ L)⁻¹
-(Stokes preconditioning: Tuckerman 1989; Mamun & Tuckerman 1995, Phys. Fluids 7, 80), so that residuals have the
-units of coefficients.
+(Stokes preconditioning: Mamun & Tuckerman 1995, Phys. Fluids 7, 80; reference from memory), so that residuals
+have the units of coefficients.
 """
 
 from __future__ import annotations
@@ -155,7 +155,7 @@ def _finished(sizes: list[float]) -> bool:
 
 
 def _forcing(size: float) -> float:
-    """Accuracy of one correction: what the next residual can gain from it (Dembo, Eisenstat & Steihaug 1982)."""
+    """Accuracy of one correction, as far as the next residual gains (Dembo, Eisenstat & Steihaug 1982)."""
     return min(3e-2, max(0.1 * size, 0.2 * TOLERANCE / size))
 
 
@@ -163,8 +163,8 @@ def _failure(equations: BoussinesqEquations, sizes: list[float], krylov: int) ->
     cell, grid = equations.cell, equations.grid
     return (
         f"steady state at Ra = {cell.rayleigh:.6g}, Pr = {cell.prandtl:.6g}, period {cell.width:.6g} on "
-        f"{grid.nx} x {grid.nz}: residual {sizes[0]:.1e} became {sizes[-1]:.1e} after {len(sizes) - 1} Newton and "
-        f"{krylov} Krylov iterations; start closer to the solution or use a finer grid"
+        f"{grid.nx} x {grid.nz}: residual {sizes[0]:.1e} became {sizes[-1]:.1e} after {len(sizes) - 1} Newton "
+        f"and {krylov} Krylov iterations; start closer to the solution or use a finer grid"
     )
 
 

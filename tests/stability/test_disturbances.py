@@ -9,8 +9,8 @@ import numpy as np
 import pytest
 
 from rbsim.dynamics.cell import Plate
-from rbsim.stability.forms import ThickPlate
 from rbsim.stability.disturbances import growth_rates
+from rbsim.stability.forms import ThickPlate
 from rbsim.stability.marginal import critical_mode, marginal_mode
 
 PUBLISHED = tomllib.loads((Path(__file__).parents[1] / "published" / "onset.toml").read_text("utf-8"))
