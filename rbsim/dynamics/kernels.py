@@ -109,7 +109,7 @@ def _subtract_squares(u, w, difference):
 
 @njit(cache=True, fastmath=FAST, error_model="numpy", nogil=True)
 def _raise_rates(us, ws, across, upwards, rates):
-    """Keep the largest |u|·across + |w|·upwards of each vertical line; NaN is caught by `State.is_finite`.
+    """Keep the largest |u|·across + |w|·upwards of each vertical line; NaN is caught by `State.is_physical`.
 
     One number for each line instead of one for all lets the compiler use vector instructions.
     """

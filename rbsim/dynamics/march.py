@@ -79,23 +79,23 @@ class March:
         state = self.state
         rate = self._stepper.evaluate(state)
         stride = plan_stride(self._control, self.stride, state.time, rate, self._agenda)
-        self._refuse_divergence(rate, stride.step_size)
+        if stride.step_size < self._control.smallest:
+            raise self._divergence("fell below the smallest step", rate, stride.step_size)
         self._stepper.set_step_size(stride.step_size)
         self._stepper.advance(state)
+        if not state.is_physical():
+            raise self._divergence("left the physical range of temperatures", rate, stride.step_size)
         self.stride = stride.after_step()
         if self.stride.left == 0:
             state.time = stride.target
         due = self._agenda.due_at(state.time) if self.stride.left == 0 else ()
         return FinishedStep(state.time, stride.step_size, rate * stride.step_size, due)
 
-    def _refuse_divergence(self, rate: float, step_size: float) -> None:
-        state = self.state
-        if state.is_finite() and step_size >= self._control.smallest:
-            return
-        what = "fell below the smallest step" if state.is_finite() else "produced a state that is not finite"
-        raise DivergedError(
-            f"the run {what} at time {state.time:.6g} (step {step_size:.3g}, Courant rate {rate:.3g}): "
+    def _divergence(self, what: str, rate: float, step_size: float) -> DivergedError:
+        time = self.state.time
+        return DivergedError(
+            f"the run {what} at time {time:.6g} (step {step_size:.3g}, Courant number {rate * step_size:.3g}): "
             "use a finer grid, a smaller time.courant or a smaller time.step",
-            time=state.time,
+            time=time,
             step_size=step_size,
         )

@@ -8,6 +8,9 @@ import numpy as np
 
 from rbsim.spectral.banded import ComplexArray
 
+#: Coefficients of θ beyond this belong to a run that explodes.
+LARGEST_COEFFICIENT = 10.0
+
 
 @dataclass
 class State:
@@ -34,12 +37,13 @@ class State:
         """Return an independent copy."""
         return State(self.theta.copy(), self.psi.copy(), self.time, self.steps)
 
-    def is_finite(self) -> bool:
-        """Tell whether the state is free of NaN and infinity.
+    def is_physical(self) -> bool:
+        """Tell whether the state is finite and its temperature within generous bounds.
 
-        One NaN anywhere reaches every coefficient within one evaluation, so a single row suffices.
+        The maximum principle, 0 ≤ T ≤ 1, bounds the first coefficients of θ by 4/π. One NaN anywhere reaches
+        every coefficient within one evaluation, so a single row suffices.
         """
-        return bool(np.isfinite(self.theta[0]).all() and np.isfinite(self.psi[0]).all())
+        return bool(np.all(np.abs(self.theta[0]) < LARGEST_COEFFICIENT) and np.isfinite(self.psi[0]).all())
 
     def resized(self, rows: int, columns: int) -> State:
         """Return the same fields on another number of modes (spectral interpolation).

@@ -217,7 +217,8 @@ def test_a_run_starts_from_another_at_a_finer_grid(whole: RunFolder, tmp_path: P
     before, after = open_run(whole.path).history, open_run(folder.path).history
     assert after["time"][0] == 0.0
     assert after["nusselt_volume"][0] == pytest.approx(before["nusselt_volume"][-1], rel=1e-4)
-    assert after["kinetic_energy"][0] == pytest.approx(before["kinetic_energy"][-1], rel=1e-10)
+    # the same coefficients; the quadrature of the energy is that of each grid
+    assert after["kinetic_energy"][0] == pytest.approx(before["kinetic_energy"][-1], rel=1e-8)
     newest = whole.checkpoint_files()[0]
     with pytest.raises(ConfigError, match="same plates"):
         simulate(
