@@ -94,7 +94,7 @@ class March:
     def _divergence(self, what: str, rate: float, step_size: float) -> DivergedError:
         time = self.state.time
         return DivergedError(
-            f"the run {what} at time {time:.6g} (step {step_size:.3g}, Courant number {rate * step_size:.3g}): "
+            f"the run {what} at time {time:.6g} (step {step_size:.3g}, Courant {rate * step_size:.3g}): "
             "use a finer grid, a smaller time.courant or a smaller time.step",
             time=time,
             step_size=step_size,
