@@ -24,14 +24,14 @@ def prepare(extras: str) -> Path:
     if sys.version_info < OLDEST_PYTHON:
         sys.exit(f"Python {sys.version.split()[0]} is too old: rbsim needs 3.11 or newer")
     python = FOLDER / ("Scripts/python.exe" if sys.platform == "win32" else "bin/python")
-    stamp = FOLDER / "installed"
-    wanted = hashlib.sha256((PROJECT / "pyproject.toml").read_bytes() + extras.encode()).hexdigest()
+    stamp = FOLDER / f"installed-{extras or 'plain'}"
+    wanted = hashlib.sha256((PROJECT / "pyproject.toml").read_bytes()).hexdigest()
     if stamp.exists() and stamp.read_text() == wanted:
         return python
     print(f"Setting up {FOLDER} (once; takes a minute or two) ...", flush=True)
     if not python.exists():
         venv.create(FOLDER, with_pip=True)
-    run([python, "-m", "pip", "install", "--quiet", "--editable", f"{PROJECT}[{extras}]"])
+    run([python, "-m", "pip", "install", "--quiet", "--editable", f"{PROJECT}[{extras}]" if extras else PROJECT])
     stamp.write_text(wanted)
     return python
 
