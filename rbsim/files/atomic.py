@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import errno
 import os
 from collections.abc import Iterator
 from contextlib import contextmanager, suppress
@@ -11,6 +12,9 @@ from rbsim.errors import RunFolderError
 
 #: Ending of unfinished files; swept when a run folder is opened for writing.
 UNFINISHED = ".unfinished"
+
+#: What systems answer when there is no room: disk, quota, largest file.
+NO_ROOM = (errno.ENOSPC, errno.EDQUOT, errno.EFBIG)
 
 
 @contextmanager
@@ -34,25 +38,39 @@ def replacing(path: Path) -> Iterator[Path]:
         temporary.replace(path)
         _sync(path.parent)
     except OSError as error:
-        reason = error.strerror or str(error)
-        raise RunFolderError(
-            f"{path}: cannot be written ({reason}); earlier data is intact, make room and resume the run"
-        ) from error
+        raise RunFolderError(_complaint(path, error)) from error
     finally:
         with suppress(OSError):
             temporary.unlink(missing_ok=True)
 
 
-def write_text(path: Path, text: str) -> None:
-    """Write a text file at once."""
+def write_bytes(path: Path, content: bytes | memoryview) -> None:
+    """Write a file at once; raises `RunFolderError` if it cannot, and leaves what was there."""
     with replacing(path) as temporary:
-        temporary.write_text(text, encoding="utf-8")
+        temporary.write_bytes(content)
+
+
+def write_text(path: Path, text: str) -> None:
+    """Write a text file at once; raises `RunFolderError` if it cannot, and leaves what was there."""
+    write_bytes(path, text.encode())
 
 
 def sweep(folder: Path) -> None:
     """Remove what killed processes left unfinished."""
     for leftover in folder.rglob(f"*{UNFINISHED}"):
         leftover.unlink(missing_ok=True)
+
+
+def _complaint(path: Path, error: OSError) -> str:
+    reason = error.strerror or str(error)
+    if error.errno in NO_ROOM:
+        return (
+            f"{path}: cannot be written ({reason}); earlier data is intact: make room and try again, "
+            "a run goes on with `rbsim resume`"
+        )
+    return (
+        f"{path}: cannot be written ({reason}); earlier data is intact: check the place and its permissions"
+    )
 
 
 def _sync(path: Path) -> None:

@@ -1,10 +1,15 @@
-"""Checkpoints: all that a run needs to go on bit for bit; the last two are kept."""
+"""Checkpoints: all that a run needs to go on bit for bit; the last two are kept.
+
+A checkpoint file is a block of text that names the format and the SHA-256 of the rest, followed by an HDF5
+file (which HDF5 calls a user block and skips). The digest is verified before anything is believed.
+"""
 
 from __future__ import annotations
 
 import hashlib
 from collections.abc import Mapping
 from dataclasses import dataclass
+from io import BytesIO
 from pathlib import Path
 from typing import Any
 
@@ -13,12 +18,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rbsim.errors import RunFolderError
-from rbsim.files.atomic import replacing
-from rbsim.files.hdf5 import mark_format, provenance, reading
+from rbsim.files.atomic import write_bytes
+from rbsim.files.format import FORMAT, FORMAT_VERSION, refuse_other_format
+from rbsim.files.hdf5 import mark_format, naming_damage
 from rbsim.files.layout import RunFolder
+from rbsim.files.provenance import provenance
 
 #: Checkpoints that stay when a new one is complete.
 KEPT = 2
+
+#: Bytes of the block in front; HDF5 allows 512 and its doubles.
+BLOCK = 512
 
 
 @dataclass(frozen=True, eq=False)
@@ -40,19 +50,9 @@ class Checkpoint:
     facts: Mapping[str, Any]
     counts: Mapping[str, int]
 
-    def digest(self) -> str:
-        """Return the SHA-256 of all content."""
-        digest = hashlib.sha256()
-        for array in (self.theta, self.psi):
-            digest.update(repr(array.shape).encode())
-            digest.update(np.ascontiguousarray(array).data)
-        digest.update(repr(sorted((k, str(v)) for k, v in self.facts.items())).encode())
-        digest.update(repr(sorted((k, int(v)) for k, v in self.counts.items())).encode())
-        return digest.hexdigest()
-
 
 def write_checkpoint(folder: RunFolder, step: int, checkpoint: Checkpoint) -> Path:
-    """Write a checkpoint, then remove those older than the last two.
+    """Write a checkpoint, then remove all but this one and the one before it.
 
     Parameters
     ----------
@@ -62,18 +62,24 @@ def write_checkpoint(folder: RunFolder, step: int, checkpoint: Checkpoint) -> Pa
         Steps taken so far.
     checkpoint : Checkpoint
         What.
+
+    Returns
+    -------
+    Path
+        The file.
+
+    Raises
+    ------
+    RunFolderError
+        If it cannot be written; earlier checkpoints stay.
     """
     path = folder.checkpoint(step)
-    with replacing(path) as temporary, h5py.File(temporary, "w") as file:
-        mark_format(file)
-        file.attrs.update(provenance())
-        file.create_dataset("theta", data=checkpoint.theta)
-        file.create_dataset("psi", data=checkpoint.psi)
-        file.create_group("facts").attrs.update(checkpoint.facts)
-        file.create_group("counts").attrs.update(checkpoint.counts)
-        file.attrs["digest"] = checkpoint.digest()
-    for old in folder.checkpoint_files()[KEPT:]:
-        old.unlink()
+    image = _image(checkpoint)
+    write_bytes(path, _block(image) + image)
+    files = folder.checkpoint_files()
+    # later steps are damaged files that a resumed run has left behind
+    for superfluous in set(files) - set(files[files.index(path) :][:KEPT]):
+        superfluous.unlink(missing_ok=True)
     return path
 
 
@@ -85,17 +91,16 @@ def read_checkpoint(path: Path) -> Checkpoint:
     RunFolderError
         If the file is missing, damaged or of another format.
     """
-    try:
-        with reading(path) as file:
+    if not path.is_file():
+        raise RunFolderError(f"{path}: no such checkpoint")
+    with naming_damage(path):
+        content = path.read_bytes()
+        image = content[BLOCK:]
+        _verify(path, content[:BLOCK], image)
+        with h5py.File(BytesIO(image), "r") as file:
             facts = {key: _plain(value) for key, value in file["facts"].attrs.items()}
             counts = {key: int(value) for key, value in file["counts"].attrs.items()}
-            checkpoint = Checkpoint(file["theta"][()], file["psi"][()], facts, counts)
-            expected = file.attrs.get("digest")
-    except (OSError, KeyError, RuntimeError, ValueError) as error:
-        raise RunFolderError(f"{path}: damaged checkpoint ({str(error).splitlines()[0]})") from error
-    if checkpoint.digest() != expected:
-        raise RunFolderError(f"{path}: damaged checkpoint (its content does not match its digest)")
-    return checkpoint
+            return Checkpoint(file["theta"][()], file["psi"][()], facts, counts)
 
 
 def read_newest(folder: RunFolder) -> tuple[Checkpoint, Path, tuple[str, ...]]:
@@ -114,6 +119,33 @@ def read_newest(folder: RunFolder) -> tuple[Checkpoint, Path, tuple[str, ...]]:
             notices.append(error.message)
     found = "; ".join(notices) or "no checkpoint was written yet"
     raise RunFolderError(f"{folder.path}: nothing to resume from ({found}); start a new run")
+
+
+def _image(checkpoint: Checkpoint) -> bytes:
+    buffer = BytesIO()
+    with h5py.File(buffer, "w") as file:
+        mark_format(file)
+        file.attrs.update(provenance())
+        file.create_dataset("theta", data=checkpoint.theta)
+        file.create_dataset("psi", data=checkpoint.psi)
+        file.create_group("facts").attrs.update(checkpoint.facts)
+        file.create_group("counts").attrs.update(checkpoint.counts)
+    return buffer.getvalue()
+
+
+def _block(image: bytes) -> bytes:
+    """Return the block of text: format, version and digest, one a line."""
+    text = f"{FORMAT}\nversion {FORMAT_VERSION}\nsha256 {hashlib.sha256(image).hexdigest()}\n"
+    return text.encode().ljust(BLOCK - 1) + b"\n"
+
+
+def _verify(path: Path, block: bytes, image: bytes) -> None:
+    name, version, *_ = [*block.decode("ascii", "replace").splitlines(), "", ""]
+    if name != FORMAT:
+        raise RunFolderError(f"{path}: damaged, or not a checkpoint of an rbsim run")
+    refuse_other_format(path, name, version.removeprefix("version "))
+    if block != _block(image):
+        raise RunFolderError(f"{path}: damaged checkpoint (its content does not match its digest)")
 
 
 def _plain(value: Any) -> Any:

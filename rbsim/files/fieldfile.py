@@ -5,13 +5,12 @@ from __future__ import annotations
 from dataclasses import dataclass
 from pathlib import Path
 
-import h5py
 import numpy as np
 from numpy.typing import NDArray
 
 from rbsim.diagnostics.quantities import READINGS
-from rbsim.files.atomic import replacing
-from rbsim.files.hdf5 import add_dimension, add_variable, mark_format, reading
+from rbsim.files.hdf5 import add_dimension, add_variable, composing, reading
+from rbsim.files.runfile import TIME_UNIT
 
 Array = NDArray[np.float64]
 
@@ -41,14 +40,22 @@ class Snapshot:
 
 
 def write_snapshot(path: Path, snapshot: Snapshot) -> None:
-    """Write a snapshot at once."""
-    with replacing(path) as temporary, h5py.File(temporary, "w") as file:
-        mark_format(file)
-        file.attrs["time"] = snapshot.time
+    """Write a snapshot at once.
+
+    Raises
+    ------
+    RunFolderError
+        If it cannot be written.
+    """
+    with composing(path) as file:
+        time = file.create_dataset("time", data=float(snapshot.time))
+        time.attrs.update({"units": TIME_UNIT, "long_name": "time since the start of the run"})
         add_dimension(file, "x", snapshot.x, "H", "horizontal place")
         add_dimension(file, "z", snapshot.z, "H", "height above the bottom plate")
         for quantity in READINGS:
-            add_variable(file, quantity, getattr(snapshot, quantity.name), ("z", "x"))
+            add_variable(file, quantity, ("z", "x"), getattr(snapshot, quantity.name))
+            # by the CF conventions, the coordinates that are not dimensions
+            file[quantity.name].attrs["coordinates"] = "time"
 
 
 def read_snapshot(path: Path) -> Snapshot:
@@ -61,4 +68,4 @@ def read_snapshot(path: Path) -> Snapshot:
     """
     with reading(path) as file:
         fields = (file[quantity.name][()] for quantity in READINGS)
-        return Snapshot(float(file.attrs["time"]), file["x"][()], file["z"][()], *fields)
+        return Snapshot(float(file["time"][()]), file["x"][()], file["z"][()], *fields)

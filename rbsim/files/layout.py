@@ -1,4 +1,4 @@
-"""Names and format of everything in a run folder."""
+"""Names of everything in a run folder; making and opening one."""
 
 from __future__ import annotations
 
@@ -7,12 +7,7 @@ from pathlib import Path
 
 from rbsim.errors import RunFolderError
 from rbsim.files.atomic import sweep
-
-#: Name and version of the format, kept in every HDF5 file; a change that old readers misread raises it.
-FORMAT, FORMAT_VERSION = "rbsim run", 1
-
-#: Root attribute names of every HDF5 file.
-FORMAT_KEY, VERSION_KEY = "format", "format_version"
+from rbsim.files.hdf5 import reading
 
 
 @dataclass(frozen=True)
@@ -82,21 +77,24 @@ class RunFolder:
 def create_run_folder(path: str | Path) -> RunFolder:
     """Make a new run folder.
 
+    Parameters
+    ----------
+    path : str or Path
+        New or empty folder; missing parents are made.
+
     Raises
     ------
     RunFolderError
         If there is something at that place already, or the place cannot be written.
     """
     folder = RunFolder(Path(path))
-    if folder.path.exists() and (not folder.path.is_dir() or any(folder.path.iterdir())):
-        what = "holds a run; use `rbsim resume`" if folder.case.exists() else "is not empty"
-        raise RunFolderError(f"{folder.path}: {what}, or name another folder with --out")
     try:
+        _refuse_occupied(folder)
         for part in (folder.path, folder.fields, folder.checkpoints, folder.figures):
             part.mkdir(parents=True, exist_ok=True)
     except OSError as error:
         raise RunFolderError(
-            f"{folder.path}: cannot be made ({error.strerror}); name another folder"
+            f"{folder.path}: cannot be made ({error.strerror or error}); name another folder"
         ) from error
     return folder
 
@@ -114,13 +112,29 @@ def open_run_folder(path: str | Path, *, for_writing: bool = False) -> RunFolder
     Raises
     ------
     RunFolderError
-        If it is missing or not a run folder.
+        If it is missing, not a run folder, or of an older or newer format.
     """
     folder = RunFolder(Path(path))
     if not folder.path.is_dir():
         raise RunFolderError(f"{folder.path}: no such run folder; make one with `rbsim run`")
-    if not folder.case.exists():
+    if not folder.case.is_file():
         raise RunFolderError(f"{folder.path}: not a run folder (case.toml is missing)")
+    if folder.run_file.is_file():
+        with reading(folder.run_file):
+            pass  # the check of the format is all that is wanted
     if for_writing:
         sweep(folder.path)
     return folder
+
+
+def _refuse_occupied(folder: RunFolder) -> None:
+    if not folder.path.exists():
+        return
+    if not folder.path.is_dir():
+        raise RunFolderError(f"{folder.path}: is a file; name another folder")
+    if folder.case.exists():
+        raise RunFolderError(
+            f"{folder.path}: holds a run already; go on with `rbsim resume`, or name another folder"
+        )
+    if any(folder.path.iterdir()):
+        raise RunFolderError(f"{folder.path}: is not empty; name another folder")

@@ -10,9 +10,10 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from rbsim.diagnostics.quantities import HISTORY, PROFILES
+from rbsim.diagnostics.quantities import HISTORY, PROFILES, READINGS
+from rbsim.files.hdf5 import naming_damage
 from rbsim.files.layout import RunFolder, open_run_folder
-from rbsim.files.runfile import read_run_file
+from rbsim.files.runfile import STREAMS, read_run_file
 
 Array = NDArray[np.float64]
 
@@ -52,7 +53,7 @@ class RunRecords:
     profiles : mapping of str to ndarray, shape (samples, nz)
         Profiles; ``time`` has the shape (samples,) and ``z`` (nz,).
     thermometers : mapping of str to ThermometerRecord
-        By name.
+        By name, in the order of the case.
     """
 
     folder: RunFolder
@@ -72,20 +73,24 @@ def open_run(path: str | Path) -> RunRecords:
     """
     folder = open_run_folder(path)
     arrays, attributes, labels = read_run_file(folder.run_file)
-    history = {"time": arrays["time"], **{q.name: arrays[q.name] for q in HISTORY}}
-    profiles = {
-        "time": arrays["profile_time"],
-        "z": arrays["z"],
-        **{q.name: arrays[q.name] for q in PROFILES},
-    }
-    names = [name.removeprefix("time_") for name in arrays if name.startswith("time_")]
-    thermometers = {name: _record(arrays, labels[f"temperature_{name}"], name) for name in names}
-    return RunRecords(folder, attributes, history, profiles, thermometers)
+    with naming_damage(folder.run_file):
+        names = [name.removeprefix("time_") for name in attributes[STREAMS] if name.startswith("time_")]
+        return RunRecords(
+            folder,
+            attributes,
+            history=_pick(arrays, ("time", *(q.name for q in HISTORY))),
+            profiles={
+                "time": arrays["profile_time"],
+                **_pick(arrays, ("z", *(q.name for q in PROFILES))),
+            },
+            thermometers={name: _record(arrays, labels[f"temperature_{name}"], name) for name in names},
+        )
+
+
+def _pick(arrays: Mapping[str, Array], names: tuple[str, ...]) -> dict[str, Array]:
+    return {name: arrays[name] for name in names}
 
 
 def _record(arrays: Mapping[str, Array], label: Mapping[str, Any], name: str) -> ThermometerRecord:
-    columns = (
-        arrays[f"{kind}_{name}"]
-        for kind in ("time", "temperature", "horizontal_velocity", "vertical_velocity")
-    )
-    return ThermometerRecord(float(label["x"]), float(label["z"]), *columns)
+    readings = {quantity.name: arrays[f"{quantity.name}_{name}"] for quantity in READINGS}
+    return ThermometerRecord(float(label["x"]), float(label["z"]), arrays[f"time_{name}"], **readings)
