@@ -159,7 +159,7 @@ def solved(cell: Cell, grid: tuple[int, int], guess: State) -> Roll:
     problem = problem_of(new_equations(cell, *grid))
     points = problem.equations.grid
     start = guess.resized(points.modes_z, points.modes_x)
-    return _as_roll(problem, solve_steady(problem, problem.space.pack(start.theta, start.psi)))
+    return measured(problem, solve_steady(problem, problem.space.pack(start.theta, start.psi)))
 
 
 def refined(roll: Roll, goal: float) -> Roll:
@@ -186,7 +186,8 @@ def settled(roll: Roll) -> Roll:
             return roll
 
 
-def _as_roll(problem: SteadyProblem, result: NewtonResult) -> Roll:
+def measured(problem: SteadyProblem, result: NewtonResult) -> Roll:
+    """Return a solution as a roll, with its Nusselt and Reynolds number."""
     equations = problem.equations
     state = problem.space.unpack(result.vector)
     nusselt, reynolds = transport(equations, state)

@@ -75,6 +75,10 @@ class SteadyProblem:
         heat, flow = self._pairs
         return self.space.pack(heat.apply_stiffness(state.theta), flow.apply_stiffness(state.psi))
 
+    def equation(self, vector: Array) -> Array:
+        """Return L c + N(c)."""
+        return self.implicit(vector) + self.explicit(vector)
+
     def precondition(self, vector: Array) -> Array:
         """Return nearly L⁻¹ r."""
         state = self.space.unpack(vector)
@@ -86,7 +90,7 @@ class SteadyProblem:
 
     def residual(self, vector: Array) -> Array:
         """Return nearly L⁻¹ (L c + N(c)), in the units of c."""
-        return self.precondition(self.implicit(vector) + self.explicit(vector))
+        return self.precondition(self.equation(vector))
 
     def tangent(self, vector: Array) -> Callable[[Array], Array]:
         """Return the preconditioned Jacobian at c, as a map of directions."""
@@ -163,8 +167,8 @@ def _failure(equations: BoussinesqEquations, sizes: list[float], krylov: int) ->
     cell, grid = equations.cell, equations.grid
     return (
         f"steady state at Ra = {cell.rayleigh:.6g}, Pr = {cell.prandtl:.6g}, period {cell.width:.6g} on "
-        f"{grid.nx} x {grid.nz}: residual {sizes[0]:.1e} became {sizes[-1]:.1e} after {len(sizes) - 1} Newton "
-        f"and {krylov} Krylov iterations; start closer to the solution or use a finer grid"
+        f"{grid.nx} x {grid.nz}: residual {sizes[0]:.1e} became {sizes[-1]:.1e} after {len(sizes) - 1} "
+        f"Newton and {krylov} Krylov iterations; start closer to the solution or use a finer grid"
     )
 
 

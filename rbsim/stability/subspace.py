@@ -57,7 +57,7 @@ class Subspace:
 
 
 def _places(part: ComplexArray, half_turn: Sign, real: bool, imaginary: bool) -> NDArray[np.intp]:
-    """Return indices into the flat real view of a coefficient array; the mean over x has no imaginary part."""
+    """Return indices into the flat real view of coefficients; the mean over x has no imaginary part."""
     rows, columns = np.indices(part.shape)
     even = (rows + columns) % 2 == 1
     kept = np.ones(part.shape, dtype=bool) if half_turn == 0 else even == (half_turn == 1)
