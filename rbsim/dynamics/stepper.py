@@ -7,10 +7,24 @@ from functools import partial
 import numpy as np
 
 from rbsim.dynamics import kernels
+from rbsim.dynamics.cell import Cell
 from rbsim.dynamics.equations import BoussinesqEquations
 from rbsim.dynamics.schemes import SPALART_MOSER_ROGERS, LowStorageScheme
 from rbsim.dynamics.state import State
-from rbsim.spectral.grid import Array
+from rbsim.spectral.grid import SMALLEST, Array, Grid
+from rbsim.spectral.team import Team
+from rbsim.spectral.transforms import choose_transforms
+
+
+def compile_loops() -> None:
+    """Take one step on the smallest grid, so that all compiled loops are ready (fast if on disk)."""
+    cell = Cell(1e3, 1.0, 2.0)
+    grid = Grid(SMALLEST, SMALLEST, cell.width)
+    stepper = Stepper(BoussinesqEquations(cell, grid, choose_transforms(grid), Team(1)))
+    state = stepper.equations.new_state()
+    stepper.evaluate(state)
+    stepper.set_step_size(1e-3)
+    stepper.advance(state)
 
 
 class Stepper:

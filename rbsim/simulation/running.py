@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import threading
 import time
 from collections.abc import Callable
 from dataclasses import dataclass
@@ -14,7 +15,7 @@ from rbsim.config.writing import case_to_toml
 from rbsim.dynamics.equations import BoussinesqEquations
 from rbsim.dynamics.march import FinishedStep, March
 from rbsim.dynamics.state import State
-from rbsim.dynamics.stepper import Stepper
+from rbsim.dynamics.stepper import Stepper, compile_loops
 from rbsim.dynamics.stepsize import Stride
 from rbsim.errors import ConfigError, DivergedError, InterruptedRunError, RunFolderError
 from rbsim.files.atomic import write_text
@@ -26,6 +27,9 @@ from rbsim.simulation.assembly import agenda_of, control_of, equations_of, fresh
 from rbsim.simulation.recorder import Recorder
 from rbsim.simulation.storing import pack, start_from_file, unpack
 from rbsim.simulation.summary import Summary, summarise
+
+#: Seconds after which a start explains why it takes so long.
+PATIENCE = 1.0
 
 
 @dataclass(frozen=True)
@@ -110,6 +114,7 @@ def simulate(case: Case, folder: str | Path, options: RunOptions | None = None) 
     """
     options = options or RunOptions()
     equations = equations_of(case, options.threads, options.library)
+    _warm_up(options.notice)
     state = _initial_state(case, equations)
     place = create_run_folder(folder)
     with locked(place):
@@ -162,6 +167,7 @@ def resume(folder: str | Path, until: float | None = None, options: RunOptions |
             case = case.model_copy(update={"time": case.time.model_copy(update={"end": end})})
             write_text(place.case, case_to_toml(case))
         equations = equations_of(case, options.threads, options.library)
+        _warm_up(options.notice)
         _refuse_other_shape(place, equations, state)
         recorder = Recorder(case, equations, place)
         recorder.resume(dict(checkpoint.counts))
@@ -175,6 +181,17 @@ def write_summary(folder: RunFolder) -> Summary | None:
     if summary is not None:
         write_text(folder.summary, json.dumps(summary.as_dict(), indent=2) + "\n")
     return summary
+
+
+def _warm_up(notice: Callable[[str], None] | None) -> None:
+    """Make the compiled loops ready, and say so when that takes a while."""
+    text = "compiling the numerical loops (once; later starts find them on disk) ..."
+    timer = threading.Timer(PATIENCE, notice or (lambda _: None), (text,))
+    timer.start()
+    try:
+        compile_loops()
+    finally:
+        timer.cancel()
 
 
 class _Run:
