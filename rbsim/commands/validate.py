@@ -31,10 +31,11 @@ def add_configuration(parser: argparse.ArgumentParser) -> None:
 
 def execute(args: argparse.Namespace) -> int:
     """Print one line about a valid configuration."""
-    from rbsim.config.loading import load_case
+    from rbsim.config.loading import check_start_exists, load_case
     from rbsim.simulation.assembly import grid_of
 
     case = load_case(args.config, args.overrides)
+    check_start_exists(case, args.config)
     grid = grid_of(case)
     chosen = " (chosen)" if case.grid == "auto" else ""
     numbers, points = case.numbers, f"{grid.nx} x {grid.nz}{chosen}"

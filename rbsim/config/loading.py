@@ -1,22 +1,20 @@
-"""Reading a case from TOML with overrides; every fault becomes one line that says what is allowed."""
+"""Reading a case from TOML with overrides, or building it from Python; every fault becomes one line."""
 
 from __future__ import annotations
 
-import difflib
+import re
 import tomllib
-import types
-import typing
 from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
-from pydantic import BaseModel, ValidationError
+from pydantic import BaseModel
 
+from rbsim.config.checking import checked
+from rbsim.config.faults import Fault, on_one_line, shown
+from rbsim.config.overrides import apply_overrides
 from rbsim.config.schema import Case
 from rbsim.errors import ConfigError
-
-#: What the checker inserts into places to tell the two kinds of grid apart.
-GRID_TAGS = ("word", "points")
 
 
 def load_case(path: str | Path, overrides: Sequence[str] = ()) -> Case:
@@ -25,7 +23,8 @@ def load_case(path: str | Path, overrides: Sequence[str] = ()) -> Case:
     Parameters
     ----------
     path : str or Path
-        Configuration file; a relative ``start.path`` in it is relative to its folder.
+        Configuration file. A relative ``start.path`` in it is relative to its folder; one in an override is
+        relative to the working folder.
     overrides : sequence of str
         Assignments ``section.key=value`` that replace what the file says; values in TOML notation, bare
         words are texts.
@@ -37,15 +36,17 @@ def load_case(path: str | Path, overrides: Sequence[str] = ()) -> Case:
     """
     file = Path(path)
     table = _read(file)
-    for override in overrides:
-        _assign(table, override)
-    start = table.get("start")
-    if isinstance(start, dict) and isinstance(start.get("path"), str):
-        start["path"] = str((file.parent / start["path"]).absolute())
-    return case_from_table(table, str(file))
+    _anchor(table, file.parent)
+    changed, refused = apply_overrides(table, overrides)
+    _anchor(table, Path())
+
+    def source(key: str) -> str:
+        return f"{_called(file)} (--set)" if _covers(changed, key) else _called(file)
+
+    return checked(Case, table, source, refused)
 
 
-def case_from_table(table: Mapping[str, Any], source: str) -> Case:
+def case_from_table(table: Mapping[str, Any], source: str = "python") -> Case:
     """Check a table of values and return the case.
 
     Parameters
@@ -58,13 +59,9 @@ def case_from_table(table: Mapping[str, Any], source: str) -> Case:
     Raises
     ------
     ConfigError
-        With all faults at once.
+        With all faults at once, one line for each.
     """
-    try:
-        return Case.model_validate(table)
-    except ValidationError as error:
-        faults = tuple(dict.fromkeys(f"{source}: {_fault(detail)}" for detail in error.errors()))
-        raise ConfigError("\n".join(faults), faults) from None
+    return checked(Case, dict(table), lambda _: source)
 
 
 def build_case(
@@ -79,143 +76,121 @@ def build_case(
 
     Parameters
     ----------
-    rayleigh, prandtl, aspect_ratio, end : float
-        Pure numbers, period in heights, last time in free-fall times.
+    rayleigh, prandtl : float
+        Pure numbers.
+    aspect_ratio : float
+        Horizontal period Γ in cell heights.
+    end : float
+        Last time in free-fall times.
     **sections
-        Further sections as in TOML, for example ``grid={"nx": 256, "nz": 128}``.
+        Further keys and sections as in TOML, for example ``grid={"nx": 256, "nz": 128}``; what they say wins
+        over the parameters above. A relative ``start.path`` is relative to the working folder.
 
     Raises
     ------
     ConfigError
-        With all faults at once.
+        With all faults at once, one line for each.
     """
-    table: dict[str, Any] = {
+    table = {name: _plain(section) for name, section in sections.items()}
+    known = {
         "numbers": {"rayleigh": rayleigh, "prandtl": prandtl},
         "cell": {"aspect_ratio": aspect_ratio},
-        **sections,
+        "time": {"end": end},
     }
-    table["time"] = {"end": end, **table.get("time", {})}
-    return case_from_table(table, "python")
+    for name, values in known.items():
+        section = table.get(name, {})
+        table[name] = {**values, **section} if isinstance(section, Mapping) else section
+    _anchor(table, Path())
+    return case_from_table(table)
+
+
+def check_start_exists(case: Case, source: str) -> None:
+    """Refuse a case whose ``start.path`` does not exist.
+
+    Not part of reading a case: the case of a finished run stays readable when its origin is gone.
+
+    Parameters
+    ----------
+    case : Case
+        The case.
+    source : str
+        Where it comes from, for the message.
+
+    Raises
+    ------
+    ConfigError
+        If there is neither a file nor a folder at that path.
+    """
+    path = case.start.path
+    if path is not None and not Path(path).exists():
+        problem = "must be an existing run folder or checkpoint; none is there"
+        fault = Fault("start.path", problem, f'"{on_one_line(path)}"')
+        raise ConfigError(fault.line(source))
 
 
 def _read(file: Path) -> dict[str, Any]:
+    name = _called(file)
     try:
-        return tomllib.loads(file.read_bytes().decode("utf-8"))
+        content = file.read_bytes()
     except FileNotFoundError:
-        raise ConfigError(f"{file}: no such file; name a TOML configuration, see configs/") from None
+        raise ConfigError(f"{name}: no such file; name a configuration in TOML, see configs/") from None
     except IsADirectoryError:
-        raise ConfigError(f"{file}: is a folder; name a TOML configuration, see configs/") from None
-    except UnicodeDecodeError as error:
-        raise ConfigError(f"{file}: byte {error.start} is not UTF-8 text; save the file as UTF-8") from None
-    except tomllib.TOMLDecodeError as error:
-        raise ConfigError(f"{file}: not valid TOML: {error}") from None
-    except OSError as error:
-        raise ConfigError(f"{file}: cannot be read: {error.strerror}") from None
-
-
-def _assign(table: dict[str, Any], override: str) -> None:
-    key, mark, text = override.partition("=")
-    names = [name.strip() for name in key.split(".")]
-    if not mark or not all(names):
-        raise ConfigError(f"--set {override}: must look like section.key=value")
+        raise ConfigError(f"{name}: is a folder; name a configuration in TOML, see configs/") from None
+    except (OSError, ValueError) as error:  # a ValueError means a null character in the name
+        reason = getattr(error, "strerror", None) or str(error)
+        raise ConfigError(
+            f"{name}: cannot be read ({reason}); name a readable configuration in TOML"
+        ) from None
     try:
-        value = tomllib.loads(f"value = {text}")["value"]
-    except tomllib.TOMLDecodeError:
-        value = text.strip()
-    place: Any = table
-    for name in names[:-1]:
-        if isinstance(place, list) and name.isdigit() and int(name) < len(place):
-            place = place[int(name)]
-        elif isinstance(place, dict):
-            if not isinstance(place.get(name), dict | list):
-                place[name] = {}
-            place = place[name]
-        else:
-            raise ConfigError(f"--set {override}: there is no table {name!r} to change")
-    if not isinstance(place, dict):
-        raise ConfigError(f"--set {override}: {'.'.join(names[:-1])} is not a table")
-    place[names[-1]] = value
+        return _parsed(content.decode("utf-8-sig"), name)
+    except UnicodeDecodeError as error:
+        line = content[: error.start].count(b"\n") + 1
+        what = f"byte 0x{content[error.start]:02x} is not UTF-8 text"
+        raise ConfigError(f"{name}: line {line}: {what}; save the file as UTF-8") from None
 
 
-def _fault(detail: Any) -> str:
-    """Say in one line what is wrong with a key and what is allowed."""
-    place = [str(part) for part in detail["loc"] if part not in GRID_TAGS]
-    key = ".".join(place)
-    kind, context, value = detail["type"], detail.get("ctx", {}), detail["input"]
-    if kind == "extra_forbidden":
-        return f"key '{key}' is unknown{_nearest(place)}"
-    if kind == "missing":
-        return f"key '{key}' is missing: {_describe(place)}"
-    message = str(context["error"]) if kind == "value_error" else _rule(kind, context, detail["msg"])
-    if message.startswith("key '"):
-        return message
-    shown = "" if isinstance(value, dict) else f" = {value!r}"
-    return f"key '{key}'{shown}: {message}{_meaning(place)}"
+def _parsed(text: str, name: str) -> dict[str, Any]:
+    try:
+        return tomllib.loads(text)
+    except tomllib.TOMLDecodeError as error:
+        raise ConfigError(f"{name}: {_syntax_fault(text, str(error))}") from None
+    except ValueError:
+        raise ConfigError(f"{name}: not valid TOML: a whole number has too many digits") from None
+    except RecursionError:
+        raise ConfigError(f"{name}: not valid TOML: brackets are nested too deeply") from None
 
 
-def _rule(kind: str, context: Mapping[str, Any], message: str) -> str:
-    """Turn the kind of a fault into what is allowed."""
-    rules = {
-        "greater_than": "must be greater than {gt}",
-        "greater_than_equal": "must be at least {ge}",
-        "less_than_equal": "must be at most {le}",
-        "literal_error": "must be {expected}",
-        "finite_number": "must be a finite number",
-        "float_type": "must be a number",
-        "int_type": "must be a whole number",
-        "string_type": "must be a text",
-        "string_too_short": "must not be empty",
-        "string_too_long": "must have at most {max_length} characters",
-        "tuple_type": "must be a list of tables, written [[thermometers]]",
-        "model_type": "must be a table",
-        "union_tag_not_found": 'must be "auto" or a table',
-        "model_attributes_type": "must be a table",
-        "string_pattern_mismatch": "must begin with a letter and hold letters, digits and _ only",
-    }
-    return rules[kind].format(**context) if kind in rules else message.lower()
+def _syntax_fault(text: str, message: str) -> str:
+    """Say which line is wrong, and how."""
+    lines = text.rstrip("\r\n").split("\n")
+    found = re.fullmatch(r"(.*) \(at line (\d+), column \d+\)", message, re.DOTALL)
+    what, line = (found[1], int(found[2])) if found else (message.split(" (at ")[0], len(lines))
+    if what == "Cannot overwrite a value":
+        what = "the key is given twice"
+    content = lines[min(line, len(lines)) - 1].strip()
+    return f"line {line}: {shown(content)} is not valid TOML: {on_one_line(what)}; correct this line"
 
 
-def _meaning(place: Sequence[str]) -> str:
-    text = _describe(place)
-    return f" ({text})" if text else ""
+def _anchor(table: Mapping[str, Any], folder: Path) -> None:
+    """Make the path of a start absolute."""
+    start = table.get("start")
+    if not isinstance(start, dict):
+        return
+    path = start.get("path")
+    if isinstance(path, Path) or (isinstance(path, str) and path):
+        start["path"] = str((folder / path).absolute())
 
 
-def _describe(place: Sequence[str]) -> str:
-    """Return the description of a key."""
-    model: Any = Case
-    text = ""
-    for name in place:
-        if name.isdigit():
-            continue
-        fields = model.model_fields if _is_model(model) else {}
-        if name not in fields:
-            return ""
-        text, model = fields[name].description or "", _inner(fields[name].annotation)
-    return text
+def _plain(section: Any) -> Any:
+    if isinstance(section, BaseModel):
+        return section.model_dump(exclude_unset=True)
+    return dict(section) if isinstance(section, Mapping) else section
 
 
-def _nearest(place: Sequence[str]) -> str:
-    """Suggest the known key that looks most like the unknown one, or list what is allowed."""
-    model: Any = Case
-    for name in place[:-1]:
-        if not name.isdigit():
-            model = _inner(model.model_fields[name].annotation)
-    known = list(model.model_fields)
-    near = difflib.get_close_matches(place[-1], known, n=1, cutoff=0.5)
-    return f"; did you mean '{near[0]}'?" if near else f"; allowed here: {', '.join(known)}"
+def _called(file: Path) -> str:
+    return on_one_line(str(file))
 
 
-def _inner(annotation: Any) -> Any:
-    """Find the section inside an annotation."""
-    if _is_model(annotation):
-        return annotation
-    if typing.get_origin(annotation) in (typing.Union, types.UnionType, tuple, typing.Annotated):
-        for part in typing.get_args(annotation):
-            inner = _inner(part)
-            if _is_model(inner):
-                return inner
-    return annotation
-
-
-def _is_model(thing: Any) -> bool:
-    return isinstance(thing, type) and issubclass(thing, BaseModel)
+def _covers(changed: Sequence[str], key: str) -> bool:
+    """Return whether a key, its table or a part of it was changed."""
+    return any(f"{key}.".startswith(f"{own}.") or own.startswith(f"{key}.") for own in changed)

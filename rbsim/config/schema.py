@@ -1,37 +1,55 @@
-"""The case: every key a configuration may hold, its unit, its range and its default."""
+"""The case: every key a configuration may hold, its meaning, unit, range and default."""
 
 from __future__ import annotations
 
+import numbers
+import os
 from typing import Annotated, Any, Literal
 
 from pydantic import (
-    AfterValidator,
     BaseModel,
     BeforeValidator,
     ConfigDict,
     Discriminator,
     Field,
+    Strict,
     Tag,
     model_validator,
 )
 
+from rbsim.config.checking import checked
+from rbsim.config.faults import FaultsError
+from rbsim.config.rules import SHORTEST_INTERVAL, broken_rules
 
-def _number(value: Any) -> Any:
-    """Refuse what Python, but no practitioner, takes for a number."""
-    if isinstance(value, bool | str):
+#: Units of keys.
+HEIGHTS, DROPS, FREE_FALL, PURE = "cell heights", "plate temperature drops", "free-fall times", "1"
+
+#: Longest time in free-fall times that any key takes.
+LONGEST_TIME = 1e7
+
+
+def _plain_number(value: Any) -> Any:
+    """Turn numbers of array packages into Python's; refuse texts and truth values."""
+    if isinstance(value, bool) or not isinstance(value, numbers.Real):
         raise ValueError("must be a number")
-    return value
+    return int(value) if isinstance(value, numbers.Integral) else float(value)
 
 
-def _even(value: int) -> int:
-    if value % 2:
-        raise ValueError("must be an even number")
-    return value
+def _plain_path(value: Any) -> Any:
+    return os.fspath(value) if isinstance(value, os.PathLike) else value
 
 
-Number = Annotated[float, BeforeValidator(_number), Field(allow_inf_nan=False)]
-Integer = Annotated[int, BeforeValidator(_number), Field(strict=True)]
-Points = Annotated[Integer, Field(ge=16, le=16384), AfterValidator(_even)]
+def _key(meaning: str, unit: str = "", allowed: str = "", **settings: Any) -> Any:
+    """Describe a key: meaning, unit ("" for texts), what is allowed where type and limits do not say it."""
+    return Field(description=meaning, json_schema_extra={"unit": unit, "allowed": allowed}, **settings)
+
+
+Number = Annotated[float, BeforeValidator(_plain_number), Strict(), Field(allow_inf_nan=False)]
+Whole = Annotated[int, BeforeValidator(_plain_number), Strict()]
+Text = Annotated[str, Strict()]
+
+#: Letters, digits and signs on one line; control characters would break messages and files.
+LINE = r"^[^\p{C}\p{Zl}\p{Zp}]*$"
 
 
 class Section(BaseModel):
@@ -43,142 +61,134 @@ class Section(BaseModel):
 class Numbers(Section):
     """Pure numbers of the layer."""
 
-    rayleigh: Number = Field(gt=0, le=1e12, description="Rayleigh number gαΔH³/(νκ)")
-    prandtl: Number = Field(default=1.0, ge=1e-4, le=1e6, description="Prandtl number ν/κ")
+    rayleigh: Number = _key("Rayleigh number gαΔH³/(νκ)", PURE, gt=0, le=1e12)
+    prandtl: Number = _key("Prandtl number ν/κ", PURE, default=1.0, ge=1e-4, le=1e6)
 
 
 class CellShape(Section):
     """Shape of the cell."""
 
-    aspect_ratio: Number = Field(default=2.0, ge=0.05, le=200, description="horizontal period Γ in heights")
+    aspect_ratio: Number = _key("horizontal period Γ", HEIGHTS, default=2.0, ge=0.05, le=200)
 
 
 class PlateSection(Section):
     """One plate."""
 
-    motion: Literal["no-slip", "free-slip"] = Field(default="no-slip", description="condition on the flow")
-    thermal: Literal["fixed-temperature"] = Field(
-        default="fixed-temperature", description="condition on the heat"
-    )
+    motion: Literal["no-slip", "free-slip"] = _key("condition on the flow", default="no-slip")
+    thermal: Literal["fixed-temperature"] = _key("condition on the heat", default="fixed-temperature")
 
 
 class Plates(Section):
     """Both plates."""
 
-    bottom: PlateSection = PlateSection()
-    top: PlateSection = PlateSection()
+    bottom: PlateSection = _key("hot plate at z = 0", default=PlateSection())
+    top: PlateSection = _key("cold plate at z = 1", default=PlateSection())
 
 
 class GridSection(Section):
     """Points of the dealiased grid."""
 
-    nx: Points = Field(description="horizontal points, even")
-    nz: Points = Field(description="vertical points, even")
+    nx: Whole = _key("horizontal points", PURE, ge=16, le=16384, multiple_of=2)
+    nz: Whole = _key("vertical points", PURE, ge=16, le=16384, multiple_of=2)
 
 
-def _kind_of_grid(value: Any) -> str | None:
-    if isinstance(value, str):
-        return "word"
-    return "points" if isinstance(value, dict | GridSection) else None
+def _form_of_grid(value: Any) -> str:
+    return "points" if isinstance(value, dict | GridSection) else "word"
 
 
 GridChoice = Annotated[
     Annotated[Literal["auto"], Tag("word")] | Annotated[GridSection, Tag("points")],
-    Discriminator(_kind_of_grid),
+    Discriminator(_form_of_grid),
 ]
 
 
 class TimeSection(Section):
     """Length of the run and of its steps."""
 
-    end: Number = Field(default=100.0, gt=0, le=1e7, description="last time in free-fall times")
-    courant: Number = Field(
-        default=0.8, gt=0, le=1, description="largest Courant number on the dealiased grid"
+    end: Number = _key("last time of the run", FREE_FALL, default=100.0, gt=0, le=LONGEST_TIME)
+    courant: Number = _key("largest Courant number on the dealiased grid", PURE, default=0.8, gt=0, le=1)
+    step: Number | None = _key(
+        "fixed step instead of the Courant limit", FREE_FALL, default=None, ge=1e-8, le=1
     )
-    step: Number | None = Field(default=None, gt=0, le=1, description="fixed step in free-fall times")
 
 
 class StartSection(Section):
     """Initial state."""
 
-    kind: Literal["noise", "roll", "state"] = Field(default="noise", description="what the run starts from")
-    amplitude: Number = Field(default=0.01, gt=0, le=1, description="temperature departure in units of Δ")
-    seed: Integer = Field(default=1, ge=0, le=2**63, description="seed of the noise")
-    pairs: Integer = Field(default=1, ge=1, le=4096, description="roll pairs in the period")
-    path: str | None = Field(default=None, min_length=1, description="run folder or checkpoint to start from")
-
-    @model_validator(mode="after")
-    def _belongs_together(self) -> StartSection:
-        given = self.model_fields_set - {"kind"}
-        allowed = {"noise": {"amplitude", "seed"}, "roll": {"amplitude", "pairs"}, "state": {"path"}}[
-            self.kind
-        ]
-        if self.kind == "state" and self.path is None:
-            raise ValueError("kind = 'state' needs the key path: a run folder or a checkpoint")
-        if given - allowed:
-            wrong, right = sorted(given - allowed), sorted(allowed)
-            raise ValueError(
-                f"kind = {self.kind!r} takes {' and '.join(right)}; remove {' and '.join(wrong)}"
-            )
-        return self
+    kind: Literal["noise", "roll", "state"] = _key("what the run starts from", default="noise")
+    amplitude: Number = _key("departure from conduction", DROPS, default=0.01, gt=0, le=1)
+    seed: Whole = _key("seed of the noise", PURE, default=1, ge=0, le=2**63 - 1)
+    pairs: Whole = _key("roll pairs in the period", PURE, default=1, ge=1, le=5461)
+    path: Annotated[Text, BeforeValidator(_plain_path)] | None = _key(
+        "run folder or checkpoint to start from",
+        allowed="the path of a run folder or checkpoint, printable text that is not empty",
+        default=None,
+        min_length=1,
+        pattern=LINE,
+    )
 
 
 class ThermometerSection(Section):
     """One virtual thermometer."""
 
-    name: str = Field(
-        pattern=r"^[A-Za-z][A-Za-z0-9_]*$", max_length=40, description="letters, digits and _, a letter first"
+    name: Text = _key(
+        "name in files and figures",
+        allowed="letters, digits and _, a letter first, at most 40 characters",
+        pattern=r"^[A-Za-z][A-Za-z0-9_]*$",
+        max_length=40,
     )
-    x: Number = Field(ge=0, description="horizontal place in heights, below the period")
-    z: Number = Field(ge=0, le=1, description="height above the bottom plate in heights")
-    interval: Number = Field(default=0.1, ge=1e-4, description="sampling interval in free-fall times")
+    x: Number = _key("horizontal place, below the period cell.aspect_ratio", HEIGHTS, ge=0, le=200)
+    z: Number = _key("height above the bottom plate", HEIGHTS, ge=0, le=1)
+    interval: Number = _key(
+        "sampling interval", FREE_FALL, default=0.1, ge=SHORTEST_INTERVAL, le=LONGEST_TIME
+    )
 
 
 class OutputSection(Section):
     """What is recorded how often."""
 
-    history_interval: Number = Field(
-        default=0.1, ge=1e-4, description="free-fall times between history samples"
+    history_interval: Number = _key(
+        "time between history samples", FREE_FALL, default=0.1, ge=SHORTEST_INTERVAL, le=LONGEST_TIME
     )
-    profile_interval: Number = Field(default=1.0, ge=1e-4, description="free-fall times between profiles")
-    field_interval: Number = Field(
-        default=10.0, ge=0, description="free-fall times between snapshots, 0: none"
+    profile_interval: Number = _key(
+        "time between profiles", FREE_FALL, default=1.0, ge=SHORTEST_INTERVAL, le=LONGEST_TIME
     )
-    checkpoint_seconds: Number = Field(
-        default=60.0, ge=0.01, description="seconds of wall clock between checkpoints"
+    field_interval: Number = _key(
+        "time between snapshots (0: none)", FREE_FALL, default=10.0, ge=0, le=LONGEST_TIME
+    )
+    checkpoint_seconds: Number = _key(
+        "wall clock between checkpoints", "seconds", default=60.0, ge=0.01, le=1e6
     )
 
 
 class Case(Section):
     """A whole case: what to simulate, how, and what to record."""
 
-    title: str = Field(default="", max_length=200, description="free text")
-    numbers: Numbers
-    cell: CellShape = CellShape()
-    plates: Plates = Plates()
-    grid: GridChoice = Field(default="auto", description='"auto", or a table with nx and nz')
-    time: TimeSection = TimeSection()
-    start: StartSection = StartSection()
-    thermometers: tuple[ThermometerSection, ...] = Field(default=(), description="virtual thermometers")
-    output: OutputSection = OutputSection()
+    title: Text = _key(
+        "free text",
+        allowed="one line of at most 200 printable characters",
+        default="",
+        max_length=200,
+        pattern=LINE,
+    )
+    numbers: Numbers = _key("pure numbers of the layer")
+    cell: CellShape = _key("shape of the cell", default=CellShape())
+    plates: Plates = _key("conditions at both plates", default=Plates())
+    grid: GridChoice = _key(
+        "points of the dealiased grid", allowed='"auto" or a table with nx and nz', default="auto"
+    )
+    time: TimeSection = _key("length of the run and of its steps", default=TimeSection())
+    start: StartSection = _key("initial state", default=StartSection())
+    thermometers: tuple[ThermometerSection, ...] = _key(
+        "virtual thermometers", allowed="a list of tables, each written [[thermometers]]", default=()
+    )
+    output: OutputSection = _key("what is recorded how often", default=OutputSection())
 
     @model_validator(mode="after")
-    def _fits_together(self) -> Case:
-        names = [t.name for t in self.thermometers]
-        for i, thermometer in enumerate(self.thermometers):
-            if thermometer.x >= self.cell.aspect_ratio:
-                raise ValueError(
-                    f"key 'thermometers.{i}.x' = {thermometer.x:g}: must lie in the cell, "
-                    f"0 <= x < {self.cell.aspect_ratio:g} (cell.aspect_ratio)"
-                )
-            if thermometer.name in names[:i]:
-                raise ValueError(
-                    f"key 'thermometers.{i}.name' = '{thermometer.name}': must differ from the others"
-                )
-        if self.time.step is not None and self.time.step > self.time.end:
-            raise ValueError(
-                f"key 'time.step' = {self.time.step:g}: must not exceed time.end = {self.time.end:g}"
-            )
+    def _obeys_the_rules(self) -> Case:
+        faults = tuple(broken_rules(self))
+        if faults:
+            raise FaultsError(faults)
         return self
 
     def with_thermometer(self, name: str, *, x: float, z: float, interval: float = 0.1) -> Case:
@@ -189,7 +199,7 @@ class Case(Section):
         name : str
             Letters, digits and underscores, a letter first.
         x, z : float
-            Place in heights.
+            Place in cell heights; 0 <= x < aspect ratio, 0 <= z <= 1.
         interval : float
             Sampling interval in free-fall times.
 
@@ -198,9 +208,7 @@ class Case(Section):
         ConfigError
             If the place lies outside the cell or the name is taken.
         """
-        from rbsim.config.loading import case_from_table
-
         table = self.model_dump(exclude_unset=True)
         entry = {"name": name, "x": x, "z": z, "interval": interval}
         table["thermometers"] = [*table.get("thermometers", ()), entry]
-        return case_from_table(table, "python")
+        return checked(Case, table)

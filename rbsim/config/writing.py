@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from typing import Any
 
+from rbsim.config.rules import START_KEYS
 from rbsim.config.schema import Case
 
 
 def case_to_toml(case: Case) -> str:
-    """Return the case as TOML, keys that were never set left at their defaults.
+    """Return the whole case as TOML, defaults included.
 
     Parameters
     ----------
@@ -23,32 +24,26 @@ def case_to_toml(case: Case) -> str:
         TOML; `load_case` gives an equal case back.
     """
     table = case.model_dump(exclude_none=True)
-    allowed = {"noise": {"amplitude", "seed"}, "roll": {"amplitude", "pairs"}, "state": {"path"}}[
-        case.start.kind
-    ]
-    table["start"] = {key: value for key, value in table["start"].items() if key in {"kind", *allowed}}
+    own = ("kind", *START_KEYS[case.start.kind])
+    table["start"] = {key: value for key, value in table["start"].items() if key in own}
     return "\n".join(_lines(table)) + "\n"
 
 
-def _lines(table: Mapping[str, Any], prefix: str = "") -> list[str]:
-    """Write plain values first, then sub-tables, then lists of tables."""
-    plain = {key: value for key, value in table.items() if not isinstance(value, dict | list | tuple)}
-    lines = [f"{key} = {_value(value)}" for key, value in plain.items()]
+def _lines(table: Mapping[str, Any], prefix: str = "") -> Iterator[str]:
+    """Write values first, then tables, then lists of tables."""
     for key, value in table.items():
-        name = f"{prefix}{key}"
+        if not isinstance(value, dict | tuple):
+            yield f"{key} = {_value(value)}"
+    for key, value in table.items():
         if isinstance(value, dict):
-            header = ["", f"[{name}]"] if any(not isinstance(v, dict) for v in value.values()) else []
-            lines += [*header, *_lines(value, f"{name}.")]
-        elif isinstance(value, list | tuple):
+            if any(not isinstance(inner, dict) for inner in value.values()):
+                yield from ("", f"[{prefix}{key}]")
+            yield from _lines(value, f"{prefix}{key}.")
+        elif isinstance(value, tuple):
             for entry in value:
-                lines += ["", f"[[{name}]]", *_lines(entry, f"{name}.")]
-    return lines
+                yield from ("", f"[[{prefix}{key}]]", *_lines(entry))
 
 
-def _value(value: Any) -> str:
-    # JSON texts are TOML texts once DEL, which JSON leaves bare, is escaped
-    return (
-        json.dumps(value, ensure_ascii=False).replace("\x7f", "\\u007f")
-        if isinstance(value, str)
-        else repr(value)
-    )
+def _value(value: str | float) -> str:
+    # texts of a case are printable, and for those JSON and TOML agree
+    return json.dumps(value, ensure_ascii=False) if isinstance(value, str) else repr(value)
