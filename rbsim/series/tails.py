@@ -17,8 +17,8 @@ from rbsim.series.records import Array, checked_record, checked_spacing, standar
 THRESHOLD = 1.0
 """Distance from the mean, in rms, at which a tail begins (common practice, no source)."""
 FEWEST_IN_TAIL = 10
-WIDEST = 1e3
-"""A Gaussian tail of a width beyond this many thresholds cannot be told from a straight line."""
+NARROWEST = 1e-3
+"""A Gaussian width below this share of the threshold is not searched: such a tail is a step."""
 
 EXPONENTIAL, GAUSSIAN, UNDECIDED = "exponential", "gaussian", "undecided"
 
@@ -127,10 +127,10 @@ def _gaussian(
     def mean_score(log_width: float) -> float:
         return float(_gaussian_score(square, math.exp(log_width), threshold))
 
-    # the score of log σ falls through zero once, between a tail hugging the threshold and a straight one
-    low, high = math.log(threshold) - 7.0, math.log(threshold * WIDEST)
-    if mean_score(low) * mean_score(high) >= 0.0:
-        width = math.exp(high if mean_score(high) > 0.0 else low)
+    # the score of log σ falls through zero once, below the root mean square of the tail
+    low, high = math.log(threshold * NARROWEST), 0.5 * math.log(square)
+    if mean_score(low) <= 0.0:
+        width = threshold * NARROWEST
         return unknown(width, z.size, "no Gaussian tail fits"), _gaussian_likelihood(
             z, inside, width, threshold
         )

@@ -44,7 +44,7 @@ class Transient:
 
 
 def end_of_transient(values: npt.ArrayLike, batch: int = BATCH) -> Transient:
-    """Return the end of the transient: the marginal standard error rule, then a test for a drift that is left.
+    """Return the end of the transient: the marginal standard error rule, then a test for a remaining drift.
 
     Parameters
     ----------
