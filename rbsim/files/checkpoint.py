@@ -74,13 +74,24 @@ def write_checkpoint(folder: RunFolder, step: int, checkpoint: Checkpoint) -> Pa
         If it cannot be written; earlier checkpoints stay.
     """
     path = folder.checkpoint(step)
-    image = _image(checkpoint)
-    write_bytes(path, _block(image) + image)
+    write_single_checkpoint(path, checkpoint)
     files = folder.checkpoint_files()
     # later steps are damaged files that a resumed run has left behind
     for superfluous in set(files) - set(files[files.index(path) :][:KEPT]):
         superfluous.unlink(missing_ok=True)
     return path
+
+
+def write_single_checkpoint(path: Path, checkpoint: Checkpoint) -> None:
+    """Write a checkpoint outside a run folder, from which runs can start.
+
+    Raises
+    ------
+    RunFolderError
+        If it cannot be written.
+    """
+    image = _image(checkpoint)
+    write_bytes(path, _block(image) + image)
 
 
 def read_checkpoint(path: Path) -> Checkpoint:

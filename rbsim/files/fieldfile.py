@@ -69,3 +69,15 @@ def read_snapshot(path: Path) -> Snapshot:
     with reading(path) as file:
         fields = (file[quantity.name][()] for quantity in READINGS)
         return Snapshot(float(file["time"][()]), file["x"][()], file["z"][()], *fields)
+
+
+def snapshot_time(path: Path) -> float:
+    """Return the time of a snapshot in free-fall times, without reading its fields.
+
+    Raises
+    ------
+    RunFolderError
+        If the file is missing, damaged or foreign.
+    """
+    with reading(path) as file:
+        return float(file["time"][()])

@@ -1,30 +1,39 @@
-"""Figures from plain arrays, in free-fall units; nothing here opens files or changes global settings."""
+"""Figures of a run from plain arrays, in free-fall units; nothing here opens files."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from math import ceil, floor
+from typing import Any
 
 import numpy as np
+from matplotlib.artist import Artist
 from matplotlib.axes import Axes
+from matplotlib.colors import Normalize
 from matplotlib.figure import Figure
+from matplotlib.image import AxesImage
 from numpy.typing import NDArray
 
 from rbsim.diagnostics.nusselt import DEFINITIONS
-from rbsim.diagnostics.quantities import HISTORY
+from rbsim.diagnostics.quantities import HISTORY, PROFILES, READINGS
+from rbsim.report.style import COLOURS, DASHES, TIME_LABEL, WIDTH, axis_label, legend_below, styled
 
 Array = NDArray[np.float64]
 
-#: Colours that colour-blind readers can tell apart (Okabe & Ito 2008, Color Universal Design), and dashes.
-COLOURS = ("#0072B2", "#D55E00", "#009E73", "#CC79A7", "#E69F00", "#56B4E9")
-DASHES: tuple[str | tuple[int, tuple[int, ...]], ...] = (
-    "-", "--", "-.", ":", (0, (5, 1, 1, 1)), (0, (3, 1, 1, 1, 1, 1)),
-)  # fmt: skip
-TIME_LABEL = "time (free-fall times)"
-SYMBOLS = {quantity.name: quantity.symbol for quantity in HISTORY}
+#: Longest piece of a cell in H that is drawn in one strip, unless there were more strips than this.
+LONGEST_STRIP, MOST_STRIPS = 6.0, 12
+
+#: More thermometers are dots without a number in a field, and left out of the traces.
+MOST_NUMBERS, MOST_TRACES = 24, 12
+
+#: Rows of pixels in the picture of a field.
+PICTURE_ROWS = 1024
+
+_QUANTITIES = {quantity.name: quantity for quantity in (*HISTORY, *PROFILES, *READINGS)}
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Trace:
     """A thermometer record for a figure.
 
@@ -45,15 +54,18 @@ class Trace:
     temperature: Array
 
 
+@styled
 def temperature_field(
     x: Array, z: Array, temperature: Array, period: float, title: str, traces: Sequence[Trace] = ()
 ) -> Figure:
     """Draw a temperature field with the places of the thermometers.
 
+    A long cell is cut into strips of equal length, one below the other.
+
     Parameters
     ----------
     x, z : ndarray, shapes (nx,) and (nz,)
-        Grid points in H.
+        Grid points in H, x evenly spaced.
     temperature : ndarray, shape (nz, nx)
         In units of Δ above the top plate.
     period : float
@@ -63,24 +75,89 @@ def temperature_field(
     traces : sequence of Trace
         Thermometers to mark.
     """
-    width = 8.0
-    height = min(10.0, max(2.4, 1.3 + (width - 1.6) / period))
-    figure = Figure(figsize=(width, height), layout="constrained")
-    axes = figure.add_subplot()
-    edges_x = np.append(x, period)
-    edges_z = np.concatenate([[0.0], 0.5 * (z[1:] + z[:-1]), [1.0]])
-    mesh = axes.pcolormesh(edges_x, edges_z, temperature, cmap="RdBu_r", vmin=0, vmax=1, rasterized=True)
-    for number, trace in enumerate(traces):
-        axes.plot(trace.x, trace.z, "o", ms=7, mfc="white", mec="black")
-        axes.annotate(str(number + 1), (trace.x, trace.z), xytext=(6, -4), textcoords="offset points")
-    axes.set(aspect="equal", xlim=(0, period), ylim=(0, 1), xlabel="x (H)", ylabel="z (H)", title=title)
-    figure.colorbar(mesh, ax=axes, label=r"temperature ($\Delta$)", shrink=0.8)
-    if traces:
-        names = "   ".join(f"{i + 1} {trace.name}" for i, trace in enumerate(traces))
-        figure.supxlabel(names, fontsize="small")
+    strips = min(ceil(period / LONGEST_STRIP), MOST_STRIPS)
+    length = period / strips
+    names = _names(traces)
+    height = min(6.0, (WIDTH - 0.8) / length) * strips + 0.4 * strips + 1.2 + 0.2 * names.count("\n")
+    figure = Figure(figsize=(WIDTH, height), layout="compressed")
+    panels = figure.subplots(strips, 1, squeeze=False)[:, 0]
+    picture = _on_even_heights(z, temperature)
+    for i, panel in enumerate(panels):
+        panel.set(xlim=(i * length, (i + 1) * length), ylim=(0, 1), aspect="equal", ylabel="z (H)")
+        image = _paint(panel, x, picture)
+        _mark(panel, traces)
+    panels[0].set_title(title)
+    panels[-1].set_xlabel("x (H)" + names)
+    place: dict[str, Any] = (
+        {"location": "bottom", "aspect": 40} if length >= 1.0 else {"location": "right", "aspect": 25}
+    )
+    bar = figure.colorbar(image, ax=list(panels), shrink=0.8, **place)
+    bar.set_label(axis_label(_QUANTITIES["temperature"], "temperature"))
     return figure
 
 
+def _on_even_heights(z: Array, temperature: Array) -> Array:
+    """Interpolate linearly to even heights, fine enough for the layers at the plates."""
+    wanted = (np.arange(PICTURE_ROWS) + 0.5) / PICTURE_ROWS
+    above = np.clip(np.searchsorted(z, wanted), 1, z.size - 1)
+    share = np.clip((wanted - z[above - 1]) / (z[above] - z[above - 1]), 0.0, 1.0)[:, None]
+    return (1.0 - share) * temperature[above - 1] + share * temperature[above]
+
+
+def _paint(panel: Axes, x: Array, picture: Array) -> AxesImage:
+    """Paint the columns that the panel shows and one on each side; the cell is periodic."""
+    spacing = x[1] - x[0]
+    left, right = panel.get_xlim()
+    columns = np.arange(floor((left - x[0]) / spacing) - 1, ceil((right - x[0]) / spacing) + 2)
+    image = AxesImage(
+        panel,
+        cmap="RdBu_r",
+        norm=Normalize(0.0, 1.0),
+        interpolation="bilinear",
+        origin="lower",
+        extent=(x[0] + (columns[0] - 0.5) * spacing, x[0] + (columns[-1] + 0.5) * spacing, 0.0, 1.0),
+    )
+    image.set_data(np.take(picture, columns, axis=1, mode="wrap"))
+    panel.add_image(image)
+    return image
+
+
+def _mark(panel: Axes, traces: Sequence[Trace]) -> None:
+    """Mark the thermometers in view by numbered circles; many are mere dots."""
+    left, right = panel.get_xlim()
+    size = 11.0 if len(traces) <= MOST_NUMBERS else 3.0
+    for i, trace in enumerate(traces):
+        if not left <= trace.x < right:
+            continue
+        artists: list[Artist] = [
+            *panel.plot(
+                trace.x, trace.z, "o", ms=size, mfc="white", mec="black", clip_on=False, zorder=10 + i
+            )
+        ]
+        if len(traces) <= MOST_NUMBERS:
+            text = panel.text(trace.x, trace.z, str(i + 1), size=8, ha="center", va="center_baseline")
+            text.set_zorder(10 + i)
+            artists.append(text)
+        for artist in artists:
+            artist.set_in_layout(False)
+
+
+def _names(traces: Sequence[Trace]) -> str:
+    """Return the numbered names, a few on a line."""
+    if not traces:
+        return ""
+    if len(traces) > MOST_NUMBERS:
+        return f"\n{len(traces)} thermometers"
+    lines = [""]
+    for i, trace in enumerate(traces):
+        word = f"{i + 1} {trace.name}"
+        if lines[-1] and len(lines[-1]) + len(word) > 60:
+            lines.append("")
+        lines[-1] += ("    " if lines[-1] else "") + word
+    return "\n" + "\n".join(lines)
+
+
+@styled
 def nusselt_history(history: Mapping[str, Array], window: tuple[float, float] | None, title: str) -> Figure:
     """Draw the Nusselt number by all definitions over time.
 
@@ -89,33 +166,39 @@ def nusselt_history(history: Mapping[str, Array], window: tuple[float, float] | 
     history : mapping of str to ndarray, shape (samples,)
         ``time`` and the Nusselt numbers.
     window : tuple of float or None
-        Start and end of the averages.
+        Start and end of the averages; sets the scale.
     title : str
         Headline.
     """
-    figure = Figure(figsize=(8.0, 4.0), layout="constrained")
+    figure = Figure(figsize=(WIDTH, 4.4), layout="constrained")
     axes = figure.add_subplot()
+    time = history["time"]
     for name, colour, dash in zip(DEFINITIONS, COLOURS, DASHES, strict=True):
-        quantity = f"nusselt_{name}"
-        axes.plot(history["time"], history[quantity], color=colour, ls=dash, lw=1.2, label=SYMBOLS[quantity])
+        quantity = _QUANTITIES[f"nusselt_{name}"]
+        axes.plot(time, history[quantity.name], color=colour, ls=dash, label=quantity.symbol)
     if window is not None:
         axes.axvspan(*window, color="0.92", zorder=0, label="averaged")
     axes.set(xlabel=TIME_LABEL, ylabel="Nusselt number", title=title)
-    _limit_to_bulk(axes, history)
-    _legend_outside(axes)
+    axes.margins(x=0 if time.size > 1 else None)
+    values = np.stack([history[f"nusselt_{name}"] for name in DEFINITIONS])
+    _limit(axes, values, np.ones(time.size, bool) if window is None else time >= window[0])
+    legend_below(axes, 4)
     return figure
 
 
-def _limit_to_bulk(axes: Axes, history: Mapping[str, Array]) -> None:
-    """Keep the first overshoot from squeezing the rest."""
-    values = np.concatenate([history[f"nusselt_{name}"] for name in DEFINITIONS])
-    low, high = np.percentile(values, [0.5, 99.5])
+def _limit(axes: Axes, values: Array, decisive: NDArray[np.bool_]) -> None:
+    """Keep the overshoot of the transient from squeezing the rest, and say that it is cut off."""
+    inside = values[:, decisive] if decisive.any() else values
+    low, high = np.percentile(inside, [0.1, 99.9])
     margin = 0.1 * (high - low) or 0.1
     axes.set_ylim(low - margin, high + margin)
+    if values.max() > high + margin:
+        axes.set_xlabel(f"{TIME_LABEL}\nvalues up to {values.max():.3g} lie above the frame")
 
 
+@styled
 def thermometer_traces(traces: Sequence[Trace], title: str) -> Figure:
-    """Draw the temperature records of all thermometers below each other.
+    """Draw the temperature records of up to `MOST_TRACES` thermometers below each other.
 
     Parameters
     ----------
@@ -124,17 +207,21 @@ def thermometer_traces(traces: Sequence[Trace], title: str) -> Figure:
     title : str
         Headline.
     """
-    figure = Figure(figsize=(8.0, 1.2 + 1.5 * len(traces)), layout="constrained")
-    panels = figure.subplots(len(traces), 1, sharex=True, squeeze=False)[:, 0]
-    for panel, trace, colour in zip(panels, traces, COLOURS * (len(traces) // 6 + 1), strict=False):
-        panel.plot(trace.time, trace.temperature, color=colour, lw=0.9)
-        panel.set_title(f"{trace.name}: x = {trace.x:g} H, z = {trace.z:g} H", fontsize="small", loc="left")
-        panel.set_ylabel(r"T ($\Delta$)")
+    shown = traces[:MOST_TRACES]
+    figure = Figure(figsize=(WIDTH, 1.0 + 1.3 * len(shown)), layout="constrained")
+    panels = figure.subplots(len(shown), 1, sharex=True, squeeze=False)[:, 0]
+    for i, (panel, trace) in enumerate(zip(panels, shown, strict=True)):
+        panel.plot(trace.time, trace.temperature, color=COLOURS[i % len(COLOURS)], lw=1.0)
+        panel.set_title(f"{i + 1} {trace.name}: x = {trace.x:g} H, z = {trace.z:g} H", loc="left")
+        panel.margins(x=0)
     panels[-1].set_xlabel(TIME_LABEL)
-    figure.suptitle(title)
+    figure.supylabel(axis_label(_QUANTITIES["temperature"], "temperature"), size="medium")
+    left_out = f" (first {len(shown)} of {len(traces)} thermometers)" if len(shown) < len(traces) else ""
+    figure.suptitle(title + left_out, size="medium")
     return figure
 
 
+@styled
 def mean_profiles(z: Array, profiles: Mapping[str, Array], title: str) -> Figure:
     """Draw time-averaged profiles of temperature, heat flux and fluctuations.
 
@@ -147,26 +234,34 @@ def mean_profiles(z: Array, profiles: Mapping[str, Array], title: str) -> Figure
     title : str
         Headline.
     """
-    figure = Figure(figsize=(8.0, 4.0), layout="constrained")
-    left, middle, right = figure.subplots(1, 3, sharey=True)
-    left.plot(profiles["temperature_profile"], z, color=COLOURS[0])
-    left.set(xlabel=r"mean temperature ($\Delta$)", ylabel="z (H)", ylim=(0, 1))
-    middle.plot(profiles["nusselt_profile"], z, color=COLOURS[1])
-    middle.set(xlabel="heat flux Nu(z)")
-    spread = max(0.05 * profiles["nusselt_profile"].mean(), np.ptp(profiles["nusselt_profile"]))
-    centre = profiles["nusselt_profile"].mean()
-    middle.set_xlim(centre - spread, centre + spread)
-    for name, label, dash in (
-        ("temperature_rms_profile", r"T ($\Delta$)", "-"),
-        ("horizontal_velocity_rms_profile", "u (free-fall vel.)", "--"),
-        ("vertical_velocity_rms_profile", "w (free-fall vel.)", ":"),
-    ):
-        right.plot(profiles[name], z, ls=dash, color=COLOURS[2], label=label)
-    right.set(xlabel="rms")
-    right.legend(fontsize="small", loc="lower center", bbox_to_anchor=(0.5, 1.0), frameon=False)
-    figure.suptitle(title)
+    figure = Figure(figsize=(WIDTH, 5.8), layout="constrained")
+    (mean, flux), (warmth, flow) = figure.subplots(2, 2, sharey=True)
+    _profile(mean, z, profiles, "temperature_profile", 0)
+    _profile(flux, z, profiles, "nusselt_profile", 1)
+    _profile(warmth, z, profiles, "temperature_rms_profile", 2)
+    _profile(flow, z, profiles, "horizontal_velocity_rms_profile", 3)
+    _profile(flow, z, profiles, "vertical_velocity_rms_profile", 4, "--")
+    flow.set_xlabel("rms velocity (free-fall velocity)")
+    flow.legend(loc="lower center", bbox_to_anchor=(0.5, 1.0), ncols=2)
+    values = profiles["nusselt_profile"]
+    half = max(0.05 * abs(values.mean()), float(np.ptp(values)))
+    flux.set_xlim(values.mean() - half, values.mean() + half)
+    for left in (mean, warmth):
+        left.set(ylabel="z (H)", ylim=(0, 1))
+    figure.suptitle(title, size="medium")
     return figure
 
 
-def _legend_outside(axes: Axes) -> None:
-    axes.legend(loc="center left", bbox_to_anchor=(1.0, 0.5), frameon=False)
+def _profile(
+    axes: Axes, z: Array, profiles: Mapping[str, Array], name: str, colour: int, dash: str = "-"
+) -> None:
+    quantity = _QUANTITIES[name]
+    axes.plot(profiles[name], z, color=COLOURS[colour], ls=dash, label=quantity.symbol)
+    axes.set_xlabel(axis_label(quantity, _WORDS.get(name, "")))
+
+
+_WORDS = {
+    "temperature_profile": "mean temperature",
+    "nusselt_profile": "heat flux",
+    "temperature_rms_profile": "rms temperature",
+}

@@ -3,18 +3,22 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
+import matplotlib as mpl
 import numpy as np
 from matplotlib.figure import Figure
 
 from rbsim.errors import ConfigError, RunFolderError
 from rbsim.files.atomic import replacing
-from rbsim.files.fieldfile import Snapshot, read_snapshot
+from rbsim.files.fieldfile import Snapshot, read_snapshot, snapshot_time
 from rbsim.files.reader import RunRecords
 from rbsim.report.figures import Trace, mean_profiles, nusselt_history, temperature_field, thermometer_traces
+from rbsim.report.style import DPI, SETTINGS, number
 from rbsim.simulation.summary import summarise
 
-FORMATS = ("png", "svg", "pdf")
+#: Endings, and what keeps the date out, so that the same drawing gives the same file.
+UNDATED: dict[str, dict[str, Any]] = {"png": {}, "svg": {"Date": None}, "pdf": {"CreationDate": None}}
 
 
 def draw_run(records: RunRecords) -> list[Path]:
@@ -71,10 +75,8 @@ def draw_snapshot(records: RunRecords, path: Path, time: float | None = None) ->
     snapshots = records.folder.snapshots()
     if not snapshots:
         raise RunFolderError(f"{records.folder.path}: has no snapshots; run with output.field_interval > 0")
-    loaded = (
-        [read_snapshot(file) for file in snapshots] if time is not None else [read_snapshot(snapshots[-1])]
-    )
-    snapshot = loaded[-1] if time is None else min(loaded, key=lambda s: abs(s.time - time))
+    file = snapshots[-1] if time is None else min(snapshots, key=lambda s: abs(snapshot_time(s) - time))
+    snapshot = read_snapshot(file)
     save(_field_figure(records, snapshot), path)
     return snapshot.time
 
@@ -90,10 +92,10 @@ def save(figure: Figure, path: Path) -> Path:
         If the file cannot be written.
     """
     kind = path.suffix.lstrip(".").lower()
-    if kind not in FORMATS:
-        raise ConfigError(f"{path}: the ending must be one of {', '.join(f'.{k}' for k in FORMATS)}")
-    with replacing(path) as temporary:
-        figure.savefig(temporary, format=kind, dpi=150)
+    if kind not in UNDATED:
+        raise ConfigError(f"{path}: the ending must be one of {', '.join(f'.{k}' for k in UNDATED)}")
+    with replacing(path) as temporary, mpl.rc_context(SETTINGS):
+        figure.savefig(temporary, format=kind, dpi=DPI, metadata=UNDATED[kind])
     return path
 
 
@@ -118,4 +120,4 @@ def _traces(records: RunRecords) -> list[Trace]:
 
 def _title(records: RunRecords) -> str:
     facts = records.attributes
-    return f"Ra = {facts['rayleigh']:g}, Pr = {facts['prandtl']:g}, Γ = {facts['aspect_ratio']:g}"
+    return f"Ra = {number(facts['rayleigh'])}, Pr = {number(facts['prandtl'])}, Γ = {facts['aspect_ratio']:g}"
