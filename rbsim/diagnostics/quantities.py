@@ -44,31 +44,63 @@ HISTORY = (
     Quantity("storage_thermal", r"$S_\mathrm{thermal}$", "1", "unsteady term of the thermal dissipation"),
     Quantity("storage_kinetic", r"$S_\mathrm{kinetic}$", "1", "unsteady term of the kinetic dissipation"),
     Quantity("reynolds", r"$Re$", "1", "Reynolds number of the rms velocity and the height"),
-    Quantity("kinetic_energy", r"$E$", "free-fall velocity^2", "volume mean of half the squared velocity"),
+    Quantity(
+        "kinetic_energy", r"$E$", "free-fall velocity squared", "volume mean of half the squared velocity"
+    ),
     Quantity(
         "temperature_mean", r"$\langle T\rangle$", "Delta", "volume mean temperature above the top plate"
     ),
-    Quantity("thermal_layer_bottom", r"$\delta_T$", "H", "slope thickness of the bottom thermal layer"),
-    Quantity("thermal_layer_top", r"$\delta_T$", "H", "slope thickness of the top thermal layer"),
     Quantity(
-        "kinetic_layer_bottom", r"$\delta_u$", "H", "height of the largest rms velocity in the lower half"
+        "thermal_layer_bottom",
+        r"$\delta_{T,\mathrm{bottom}}$",
+        "H",
+        "slope thickness of the bottom thermal layer",
     ),
-    Quantity("kinetic_layer_top", r"$\delta_u$", "H", "depth of the largest rms velocity in the upper half"),
+    Quantity(
+        "thermal_layer_top", r"$\delta_{T,\mathrm{top}}$", "H", "slope thickness of the top thermal layer"
+    ),
+    Quantity(
+        "kinetic_layer_bottom",
+        r"$\delta_{u,\mathrm{bottom}}$",
+        "H",
+        "height of the largest rms horizontal velocity in the lower half",
+    ),
+    Quantity(
+        "kinetic_layer_top",
+        r"$\delta_{u,\mathrm{top}}$",
+        "H",
+        "depth of the largest rms horizontal velocity in the upper half",
+    ),
     Quantity("tail_x", r"$\epsilon_x$", "1", "spectral tail of the Fourier modes over the largest amplitude"),
     Quantity(
         "tail_z", r"$\epsilon_z$", "1", "spectral tail of the Chebyshev modes over the largest amplitude"
     ),
     Quantity("roll_pairs", r"$n$", "1", "number of roll pairs in the period"),
-    Quantity("step_size", r"$\Delta t$", "free-fall time", "time step"),
-    Quantity("courant", r"$C$", "1", "Courant number on the dealiased grid"),
+    Quantity("step_size", r"$\Delta t$", "free-fall time", "length of the last time step"),
+    Quantity("courant", r"$C$", "1", "Courant number of the last time step on the dealiased grid"),
 )
 
 PROFILES = (
     Quantity("temperature_profile", r"$\langle T\rangle_x$", "Delta", "horizontal mean temperature"),
-    Quantity("nusselt_profile", r"$Nu(z)$", "1", "total vertical heat flux"),
-    Quantity("temperature_rms_profile", r"$T_\mathrm{rms}$", "Delta", "rms of the temperature along x"),
-    Quantity("horizontal_velocity_rms_profile", r"$u_\mathrm{rms}$", "free-fall velocity", "rms along x"),
-    Quantity("vertical_velocity_rms_profile", r"$w_\mathrm{rms}$", "free-fall velocity", "rms along x"),
+    Quantity("nusselt_profile", r"$Nu(z)$", "1", "vertical heat flux, mean over x"),
+    Quantity(
+        "temperature_rms_profile",
+        r"$T_\mathrm{rms}$",
+        "Delta",
+        "rms over x of the temperature about its mean",
+    ),
+    Quantity(
+        "horizontal_velocity_rms_profile",
+        r"$u_\mathrm{rms}$",
+        "free-fall velocity",
+        "rms over x of the horizontal velocity",
+    ),
+    Quantity(
+        "vertical_velocity_rms_profile",
+        r"$w_\mathrm{rms}$",
+        "free-fall velocity",
+        "rms over x of the vertical velocity",
+    ),
 )
 
 #: What a thermometer records; also the fields of a snapshot.
