@@ -17,7 +17,7 @@ from types import ModuleType
 from rbsim.errors import RbsimError
 
 #: Modules of the subcommands, in the order of the help.
-COMMANDS = ("validate", "run", "resume", "summary", "snapshot", "onset")
+COMMANDS = ("validate", "run", "resume", "summary", "snapshot", "onset", "rolls")
 
 EXIT_CODES = """exit codes:
   0  done

@@ -53,9 +53,14 @@ def write_branch(path: Path, rolls: Sequence[Roll]) -> None:
         write_csv(path, columns)
         return
     with composing(path) as file:
-        add_dimension(file, "point", np.arange(len(rows)), "1", "place on the branch")
+        add_dimension(file, "point", np.arange(len(rolls)), "1", "place on the branch")
         for quantity in COLUMNS:
             add_variable(file, quantity, ("point",), columns[quantity.name])
+
+
+def _row(roll: Roll) -> tuple[float, ...]:
+    cell = roll.cell
+    return (cell.rayleigh, cell.prandtl, cell.width, roll.nusselt, roll.reynolds, roll.residual, *roll.grid)
 
 
 def check_ending(path: Path) -> None:

@@ -80,7 +80,7 @@ class _Corrector:
         return problem_of(new_equations(cell, *self._roll.grid))
 
     def sensitivity(self, problem: SteadyProblem, place: _Place) -> Array:
-        """Return the derivative of the preconditioned equations with respect to the logarithm of the parameter."""
+        """Return the derivative of the preconditioned equations in the logarithm of the parameter."""
         sides = [self.problem(place.log + s * DIFFERENCE).equation(place.vector) for s in (1, -1)]
         return problem.precondition((sides[0] - sides[1]) / (2.0 * DIFFERENCE))
 
