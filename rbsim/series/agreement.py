@@ -120,8 +120,8 @@ def compare_estimates(pairs: Mapping[str, tuple[Estimate, Estimate]], level: flo
     Parameters
     ----------
     pairs : mapping of str to (Estimate, Estimate)
-        The two estimates of every statistic. Those named rms, correlation_time and flatness are compared as
-        logarithms and as 1/(F − 1), on which they scatter nearly normally, all others as they are.
+        The two estimates of every statistic. Those named rms, correlation_time and flatness, which scatter
+        unevenly, are compared as they are and as logarithms or 1/(F − 1); the larger p-value counts.
     level : float
         Chance of a false alarm over all statistics together.
 
@@ -138,7 +138,7 @@ def compare_estimates(pairs: Mapping[str, tuple[Estimate, Estimate]], level: flo
     """
     if not 0.0 < level < 1.0:
         raise ValueError(f"level {level}: must lie between 0 and 1")
-    p_values = {name: _p_value(_SCALES.get(name, _plain), *pair) for name, pair in pairs.items()}
+    p_values = {name: _larger_p_value(name, *pair) for name, pair in pairs.items()}
     adjusted = dict(zip(p_values, holm(list(p_values.values())), strict=True))
     comparisons = tuple(
         Comparison(
@@ -187,6 +187,12 @@ def _flatness(value: float) -> tuple[float, float]:
 
 
 _SCALES: dict[str, _Scale] = {"rms": _logarithm, "correlation_time": _logarithm, "flatness": _flatness}
+
+
+def _larger_p_value(quantity: str, first: Estimate, second: Estimate) -> float:
+    """Larger p-value of the plain difference and that on the statistic's own scale."""
+    scales = {_plain, _SCALES.get(quantity, _plain)}
+    return max(_p_value(scale, first, second) for scale in scales)
 
 
 def _p_value(scale: _Scale, first: Estimate, second: Estimate) -> float:

@@ -40,7 +40,7 @@ def coverage(estimates, truth=0.0):
 
 
 @EVERY
-@pytest.mark.parametrize(("phi", "samples"), [(0.0, 200), (0.6, 800), (0.9, 1500)])
+@pytest.mark.parametrize(("phi", "samples"), [(0.0, 200), (0.6, 600), (0.9, 1200)])
 def test_95_percent_intervals_hold_the_truth(autoregressive, estimator, phi, samples):
     found = [estimator(record, 1.0) for record in autoregressive(phi, samples, 2000, seed=11)]
     assert all(math.isfinite(e.ci95) for e in found)
@@ -68,7 +68,7 @@ def test_oscillating_records_are_covered_and_not_wasteful(oscillating, period, d
 
 
 @EVERY
-@pytest.mark.parametrize("phi", [0.5, 0.9, 0.98])
+@pytest.mark.parametrize("phi", [0.5, 0.9])
 def test_the_error_is_the_exact_one(autoregressive, estimator, phi):
     n = 40 * round((1 + phi) / (1 - phi)) * 5
     found = [estimator(record, 1.0).standard_error for record in autoregressive(phi, n, 200, seed=14)]

@@ -29,8 +29,8 @@ def test_starts_are_those_of_a_walk_through_the_record(values):
 def test_rate_of_a_smooth_gaussian_record_is_rices(smooth):
     records = smooth(4000, 200, seed=1)
     found = [excursion_rate(record, 0.1, "upper", 1.0, 1.0) for record in records]
-    # upcrossings of one rms: Rice 1944, with the correlation at one sample, exact for a sampled Gaussian record
-    # at level 0 and to second order in the step at others
+    # upcrossings of one rms: Rice 1944, with the correlation at one sample, exact for a sampled Gaussian
+    # record at level 0 and to second order in the step at others
     one = np.mean(records[:, 1:] * records[:, :-1])
     rice = math.acos(one) / (2.0 * math.pi * 0.1) * math.exp(-0.5)
     assert np.mean([e.mean for e in found]) == pytest.approx(rice, rel=0.03)

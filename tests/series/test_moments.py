@@ -52,7 +52,7 @@ def test_intervals_of_gaussian_records_hold_the_truth(autoregressive, phi, sampl
 
 
 def test_intervals_of_skewed_records_hold_the_truth(autoregressive):
-    uniform = special.ndtr(autoregressive(0.8, 4000, 300, seed=6))
+    uniform = special.ndtr(autoregressive(0.8, 4000, 200, seed=6))
     found = [moments_with_errors(r, 1.0) for r in special.gammaincinv(9.0, uniform)]
     truths = stats.gamma.stats(9.0, moments="mvsk")
     covered = coverage(found, (truths[0], math.sqrt(truths[1]), truths[2], 3.0 + truths[3]))

@@ -48,6 +48,6 @@ def test_no_bound_for_records_that_do_not_settle(record):
 
 
 def test_wandering_records_do_not_pass(autoregressive):
-    walks = np.cumsum(np.random.default_rng(2).standard_normal((3000, 64)), axis=1)
+    walks = np.cumsum(np.random.default_rng(2).standard_normal((1500, 64)), axis=1)
     assert sum(settled_half_width(walk) is not None for walk in walks) <= 2
-    assert all(settled_half_width(r) is None for r in autoregressive(0.95, 200, 2000, seed=3))
+    assert all(settled_half_width(r) is None for r in autoregressive(0.95, 200, 1000, seed=3))
