@@ -18,13 +18,14 @@ if TYPE_CHECKING:
     from rbsim.config.loading import build_case, load_case
     from rbsim.config.schema import Case
     from rbsim.config.writing import case_to_toml
-    from rbsim.errors import RbsimError
+    from rbsim.errors import ConfigError, RbsimError
     from rbsim.files.reader import RunRecords, open_run
     from rbsim.simulation.running import Progress, RunOptions, resume, simulate
     from rbsim.simulation.summary import Summary, summarise
 
 _HOMES = {
     "Case": "rbsim.config.schema",
+    "ConfigError": "rbsim.errors",
     "Progress": "rbsim.simulation.running",
     "RbsimError": "rbsim.errors",
     "RunOptions": "rbsim.simulation.running",
@@ -41,6 +42,7 @@ _HOMES = {
 
 __all__ = [
     "Case",
+    "ConfigError",
     "Progress",
     "RbsimError",
     "RunOptions",

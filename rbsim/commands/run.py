@@ -48,10 +48,11 @@ def execute(args: argparse.Namespace) -> int:
     from pathlib import Path
 
     from rbsim.commands.progress import ProgressLine
-    from rbsim.config.loading import load_case
+    from rbsim.config.loading import check_start_exists, load_case
     from rbsim.simulation.running import simulate
 
     case = load_case(args.config, args.overrides)
+    check_start_exists(case, args.config)
     out = args.out or str(Path("runs") / Path(args.config).stem)
     line = ProgressLine()
     options = options_of(args, line)

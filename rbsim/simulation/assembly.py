@@ -31,12 +31,24 @@ def cell_of(case: Case) -> Cell:
 
 
 def grid_of(case: Case) -> Grid:
-    """Return the grid of a case, the recommended one for `grid = "auto"`."""
+    """Return the grid of a case, the recommended one for `grid = "auto"`.
+
+    Raises
+    ------
+    ConfigError
+        If the grid is too coarse for the wanted number of rolls.
+    """
     if isinstance(case.grid, str):
         nx, nz = recommended_points(cell_of(case))
     else:
         nx, nz = case.grid.nx, case.grid.nz
-    return Grid(nx, nz, case.cell.aspect_ratio)
+    grid = Grid(nx, nz, case.cell.aspect_ratio)
+    if case.start.kind == "roll" and case.start.pairs >= grid.modes_x:
+        raise ConfigError(
+            f"case: key 'start.pairs' = {case.start.pairs}: must be less than {grid.modes_x} on the grid "
+            f"{nx} x {nz}; ask for fewer pairs or a finer grid"
+        )
+    return grid
 
 
 def equations_of(case: Case, threads: int | None = None, library: str | None = None) -> BoussinesqEquations:
@@ -84,19 +96,8 @@ def control_of(case: Case) -> StepControl:
 
 
 def fresh_state(case: Case, equations: BoussinesqEquations) -> State:
-    """Return the initial state of a case that does not start from a file.
-
-    Raises
-    ------
-    ConfigError
-        If the grid is too coarse for the wanted number of rolls.
-    """
+    """Return the initial state of a case that does not start from a file."""
     start = case.start
     if start.kind == "roll":
-        try:
-            return single_roll(equations, start.pairs, start.amplitude)
-        except ValueError as error:
-            raise ConfigError(
-                f"case: key 'start.pairs': {error}; ask for fewer pairs or a finer grid"
-            ) from error
+        return single_roll(equations, start.pairs, start.amplitude)
     return conduction_with_noise(equations, start.amplitude, start.seed)
