@@ -114,6 +114,26 @@ def test_a_lock_of_another_host_is_respected_and_can_be_removed(folder: RunFolde
         pass
 
 
+def test_a_lock_freed_at_the_very_moment_is_taken_anew(
+    folder: RunFolder, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """The holder removes its file after we opened it and before we lock it."""
+    flock, calls = fcntl.flock, []
+
+    def late(handle: int, operation: int) -> None:
+        if not calls:
+            folder.lock.unlink()
+        calls.append(operation)
+        flock(handle, operation)
+
+    monkeypatch.setattr(fcntl, "flock", late)
+    with locked(folder):
+        assert json.loads(folder.lock.read_text(encoding="utf-8"))["pid"] == os.getpid()
+        with pytest.raises(RunFolderError, match=f"process {os.getpid()}"), locked(folder):
+            pass
+    assert len(calls) == 3
+
+
 def test_of_many_processes_at_once_one_wins(folder: RunFolder) -> None:
     """All find the lock of a dead process and run for it; nobody holds it beside another one."""
     stale = Holder(socket.gethostname(), 2**22 + 1, "1", "noon")
