@@ -6,9 +6,10 @@ import math
 from dataclasses import dataclass
 
 import numpy as np
+import numpy.typing as npt
 
 from rbsim.series.averages import mean_with_error
-from rbsim.series.records import Array, standardise
+from rbsim.series.records import checked_record, standardise
 
 CRITICAL = 0.461
 """5 % point of the Cramér–von Mises statistic of a Brownian bridge (Anderson & Darling 1952)."""
@@ -33,13 +34,18 @@ class Stationarity:
     testable: bool
 
 
-def stationarity_test(record: Array) -> Stationarity:
+def stationarity_test(values: npt.ArrayLike) -> Stationarity:
     """Test a record for a drifting mean.
 
     Parameters
     ----------
-    record : ndarray, shape (n,)
+    values : array_like, shape (n,)
         Finite values at even spacing, n ≥ 4.
+
+    Raises
+    ------
+    ValueError
+        If the record is not one-dimensional and finite with at least four samples.
 
     Notes
     -----
@@ -47,7 +53,7 @@ def stationarity_test(record: Array) -> Stationarity:
     the root of the long-run variance times n, are a Brownian bridge for a steady record. The long-run
     variance is that of the second half, which a transient spoils least.
     """
-    rest = standardise(record)
+    rest = standardise(checked_record(values, 4))
     n = rest.values.size
     if rest.scale == 0.0:
         return Stationarity(0.0, True, True)

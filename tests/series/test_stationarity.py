@@ -26,6 +26,11 @@ def test_too_short_a_record_cannot_be_tested(autoregressive):
     assert not test.steady
 
 
+def test_three_samples_are_refused():
+    with pytest.raises(ValueError, match="at least 4"):
+        stationarity_test([1.0, 2.0, 3.0])
+
+
 def test_a_constant_record_is_steady():
     assert stationarity_test(np.full(10, 1.0)).steady
 
