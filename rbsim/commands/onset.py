@@ -12,6 +12,7 @@ from rbsim.commands.plates import add_plate_arguments, describe, plates_of
 
 if TYPE_CHECKING:
     from rbsim.stability.disturbances import Disturbance
+    from rbsim.stability.estimate import OnsetEstimate
     from rbsim.stability.forms import AnyPlate
     from rbsim.stability.marginal import MarginalMode
 
@@ -22,6 +23,7 @@ EXAMPLES = """  rbsim onset
   rbsim onset --bottom-thermal fixed-flux --top-thermal fixed-flux --period 10
   rbsim onset --neutral neutral.csv --figure neutral.png
   rbsim onset --rayleigh 2000 --prandtl 0.71 --wavenumber 3 --shapes mode.csv
+  rbsim onset --from-data nu.csv --figure estimate.png
 """
 
 #: Points of a neutral curve and of a shape.
@@ -46,6 +48,8 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument("--wavenumber", type=float, metavar="K", help="for growth rates (default: critical)")
     parser.add_argument("--shapes", metavar="CSV", help="write the shape of the fastest disturbance")
+    parser.add_argument("--from-data", metavar="CSV", help="estimate the onset from Ra,Nu or Ra,growth")
+    parser.add_argument("--within", type=float, default=1.5, help="fit Nu up to this multiple of onset (1.5)")
     parser.add_argument("--json", action="store_true", help="print JSON")
 
 
@@ -63,7 +67,9 @@ def execute(args: argparse.Namespace) -> int:
     }
     if args.rayleigh is not None:
         facts |= _growth(args, plates, critical)
-    if args.neutral or args.figure:
+    if args.from_data:
+        facts |= _estimate(args, critical)
+    if args.neutral or (args.figure and not args.from_data):
         _curve(args, plates, critical)
     print(json.dumps(facts, indent=2) if args.json else "\n".join(_lines(args, facts)))
     return 0
@@ -84,6 +90,8 @@ def check(args: argparse.Namespace) -> None:
         for name in ("period", "rayleigh", "prandtl", "wavenumber")
         if (value := getattr(args, name)) is not None and not 0.0 < value < math.inf
     ]
+    if not 1.05 <= args.within <= 10.0:
+        faults.append(f"--within {args.within:g}: must be 1.05 ... 10")
     if not 0 <= args.mode <= 8:
         faults.append(f"--mode {args.mode}: must be 0 ... 8")
     if args.rayleigh is None and (args.shapes or args.wavenumber):
@@ -121,6 +129,53 @@ def _write_shapes(path: Path, mode: Disturbance) -> None:
     write_csv(path, {"z": z, **mode.shapes(z)})
 
 
+def _estimate(args: argparse.Namespace, critical: MarginalMode) -> dict[str, Any]:
+    from rbsim.files.tables import column_names, read_csv
+    from rbsim.stability.estimate import onset_from_growth, onset_from_nusselt
+
+    path = Path(args.from_data)
+    growing = "growth" in column_names(path)
+    name = "growth" if growing else "Nu"
+    table = read_csv(path, ("Ra", name))
+    if growing:
+        found = onset_from_growth(table["Ra"], table[name])
+    else:
+        found = onset_from_nusselt(table["Ra"], table[name], args.within)
+    if args.figure:
+        _draw_estimate(args, table, found, critical.rayleigh)
+    return {
+        "rayleigh_estimate": found.rayleigh,
+        "rayleigh_interval": list(found.interval),
+        "points_used": int(found.used.sum()),
+        "points": int(found.used.size),
+        "law": "growth rates" if growing else "weakly nonlinear heat transport",
+        "law_coefficients": list(found.coefficients),
+    }
+
+
+def _draw_estimate(
+    args: argparse.Namespace, table: dict[str, Any], found: OnsetEstimate, theory: float
+) -> None:
+    import numpy as np
+
+    from rbsim.report.onset_figures import onset_estimate_figure
+    from rbsim.report.runfigures import save
+
+    used = table["Ra"][found.used]
+    rayleigh = np.linspace(used.min(), used.max(), 200)
+    growing = "growth" in table
+    law = found.growth(rayleigh) if growing else found.nusselt(rayleigh)
+    measured = table["growth" if growing else "Nu"]
+    figure = onset_estimate_figure(
+        (table["Ra"], measured),
+        (rayleigh, law),
+        (found.rayleigh, *found.interval),
+        theory,
+        ("growth rate" if growing else "Nusselt number", describe(args)),
+    )
+    save(figure, Path(args.figure))
+
+
 def _curve(args: argparse.Namespace, plates: tuple[AnyPlate, AnyPlate], critical: MarginalMode) -> None:
     import numpy as np
 
@@ -132,7 +187,7 @@ def _curve(args: argparse.Namespace, plates: tuple[AnyPlate, AnyPlate], critical
         from rbsim.files.tables import write_csv
 
         write_csv(Path(args.neutral), {"wavenumber": wavenumbers, "rayleigh": rayleigh})
-    if args.figure:
+    if args.figure and not args.from_data:
         from rbsim.report.onset_figures import neutral_curve_figure
         from rbsim.report.runfigures import save
 
@@ -172,4 +227,10 @@ def _lines(args: argparse.Namespace, facts: dict[str, Any]) -> list[str]:
         lines.append(f"  in kappa/H^2             {rates}")
         rates = "  ".join(f"{rate:.6g}" for rate in facts["growth_rates_free_fall"])
         lines.append(f"  in 1/free-fall time      {rates}")
+    if "rayleigh_estimate" in facts:
+        low, high = facts["rayleigh_interval"]
+        lines.append(
+            f"onset from the table      {facts['rayleigh_estimate']:.6g}  (95 %: {low:.6g} ... {high:.6g})"
+        )
+        lines.append(f"  {facts['law']}, {facts['points_used']} of {facts['points']} points in range")
     return lines

@@ -14,14 +14,19 @@ from rbsim.commands.plates import add_plate_arguments, plates_of
 if TYPE_CHECKING:
     from rbsim.dynamics.cell import Cell
     from rbsim.stability.rolls import Roll
+    from rbsim.stability.spectrum import RollMode
 
 NAME = "rolls"
-HELP = "steady rolls by Newton's method, their branches and the period of most heat"
+HELP = "steady rolls by Newton's method, their branches, stability and period of most heat"
 EXAMPLES = """  rbsim rolls --rayleigh 1e4 --prandtl 0.71 --period 2.0158 --json
   rbsim rolls --rayleigh 1e4 --prandtl 7 --state roll.h5 --figure roll.png
   rbsim rolls --rayleigh 1e4 --follow rayleigh --to 1e6 --branch branch.csv
   rbsim rolls --rayleigh 1e5 --prandtl 7 --best-period
+  rbsim rolls --rayleigh 1e4 --prandtl 0.71 --period 2 --modes
+  rbsim rolls --rayleigh 6e5 --prandtl 0.71 --period 2 --oscillatory-onset
 """
+
+SYMMETRY = {1: "even", -1: "odd", 0: "mixed"}
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -34,6 +39,12 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--grid", metavar="NX,NZ", help="dealiased points (default: enough)")
     parser.add_argument("--follow", choices=("rayleigh", "prandtl", "period"), help="follow the branch in it")
     parser.add_argument("--to", type=float, metavar="VALUE", help="where to stop following")
+    parser.add_argument(
+        "--modes", action="store_true", help="growth of the leading disturbances (the last roll)"
+    )
+    parser.add_argument(
+        "--oscillatory-onset", action="store_true", help="find the Ra nearby where rolls turn oscillatory"
+    )
     parser.add_argument("--branch", metavar="FILE", help="table of the branch, .csv or .h5")
     parser.add_argument("--states", metavar="DIR", help="keep every state of the branch, to start runs from")
     parser.add_argument("--state", metavar="FILE", help="keep the last state, to start a run from")
@@ -43,8 +54,6 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def execute(args: argparse.Namespace) -> int:
     """Find the rolls."""
-    from rbsim.errors import NotConvergedError
-
     cell, grid = cell_of(args), _grid(args)
     _check_branch_file(args)
     rolls: list[Roll] = []
@@ -53,13 +62,14 @@ def execute(args: argparse.Namespace) -> int:
             rolls.append(roll)
             if args.follow and not args.json:
                 print(_line(roll), flush=True)
-    except NotConvergedError:
+        modes = _modes(args, rolls)
+    finally:
         _write(args, rolls)
-        raise
-    _write(args, rolls)
     facts = facts_of(rolls[-1])
     if args.follow:
         facts["points"] = len(rolls)
+    if modes:
+        facts["modes"] = [_mode_facts(mode) for mode in modes]
     print(json.dumps(facts, indent=2) if args.json else _text(facts))
     return 0
 
@@ -71,11 +81,44 @@ def _computed(args: argparse.Namespace, cell: Cell, grid: tuple[int, int] | None
     if args.follow:
         yield from branch(steady_roll(cell, (grid or (48, 32))), args.follow, args.to)
         return
-    roll = steady_roll(cell, grid or ((48, 32) if args.best_period else None))
+    rough = args.best_period or args.oscillatory_onset
+    roll = steady_roll(cell, grid or ((48, 32) if rough else None))
     if args.best_period:
         roll = best_period(roll)
         roll = settled(roll) if grid is None else solved(roll.cell, grid, roll.state)
     yield roll
+
+
+def _modes(args: argparse.Namespace, rolls: list[Roll]) -> list[RollMode]:
+    """Find what was asked about stability; the roll of oscillatory onset becomes the last of the rolls."""
+    if not (args.modes or args.oscillatory_onset):
+        return []
+    from rbsim.errors import NotConvergedError
+    from rbsim.stability.rolls import refined
+    from rbsim.stability.spectrum import MODE_TAIL, OSCILLATING, leading_modes, oscillatory_onset
+
+    last = rolls[-1] if args.grid else refined(rolls[-1], MODE_TAIL)
+    modes = leading_modes(last)
+    if not args.oscillatory_onset:
+        return modes
+    swaying = [mode for mode in modes if mode.frequency > OSCILLATING]
+    if not swaying:
+        raise NotConvergedError(
+            f"oscillatory onset: no leading mode oscillates at Ra = {last.cell.rayleigh:.6g}; start closer"
+        )
+    critical, mode = oscillatory_onset(last, swaying[0])
+    rolls.append(critical)
+    return [mode]
+
+
+def _mode_facts(mode: RollMode) -> dict[str, Any]:
+    return {
+        "growth": mode.growth,
+        "frequency": mode.frequency,
+        "mirror": mode.mirror,
+        "half_turn": mode.half_turn,
+        "residual": mode.residual,
+    }
 
 
 def cell_of(args: argparse.Namespace) -> Cell:
@@ -101,8 +144,8 @@ def cell_of(args: argparse.Namespace) -> Cell:
         faults.append("--follow and --to go together")
     if (args.branch or args.states) and not args.follow:
         faults.append("--branch and --states need --follow")
-    if args.follow and args.best_period:
-        faults.append("--best-period and --follow exclude each other")
+    if args.follow and (args.best_period or args.oscillatory_onset):
+        faults.append("--best-period and --oscillatory-onset exclude --follow")
     if faults or not isinstance(bottom, Plate) or not isinstance(top, Plate):
         raise ConfigError("\n".join(faults), tuple(faults))
     return Cell(args.rayleigh, args.prandtl, _period(args, bottom, top), bottom, top)
@@ -170,12 +213,17 @@ def _text(facts: dict[str, Any]) -> str:
     change = facts["nusselt_change"]
     nx, nz = facts["grid"]
     tail = "" if change is None else f"; Nu changed by {change:.0e} when the grid was doubled"
+    modes = "".join(
+        f"\nmode: growth {mode['growth']:.6g}, frequency {mode['frequency']:.6g} per free-fall time, "
+        f"{SYMMETRY[mode['mirror']]} in the mirror, {SYMMETRY[mode['half_turn']]} in the half turn"
+        for mode in facts.get("modes", [])
+    )
     return (
         f"steady rolls at Ra = {facts['rayleigh']:.8g}, Pr = {facts['prandtl']:.8g}, "
         f"period {facts['period']:.8g} H\n"
         f"Nusselt number   {facts['nusselt']:.10g}\n"
         f"Reynolds number  {facts['reynolds']:.10g}\n"
-        f"grid {nx} x {nz}, residual {facts['residual']:.0e}{tail}"
+        f"grid {nx} x {nz}, residual {facts['residual']:.0e}{tail}{modes}"
     )
 
 

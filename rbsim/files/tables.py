@@ -38,6 +38,17 @@ def _plain(value: Any) -> Any:
     return repr(float(value)) if isinstance(value, float | np.floating) else value
 
 
+def column_names(path: Path) -> list[str]:
+    """Return the lower-case names in the header of a CSV file.
+
+    Raises
+    ------
+    ConfigError
+        The file cannot be read.
+    """
+    return _header(_rows(path))
+
+
 def read_csv(path: Path, names: Sequence[str]) -> dict[str, Array]:
     """Read named columns of numbers; other columns and lines that start with # are passed over.
 
@@ -53,13 +64,8 @@ def read_csv(path: Path, names: Sequence[str]) -> dict[str, Array]:
     ConfigError
         The file is missing, has no such column, or holds something that is no number.
     """
-    try:
-        text = path.read_text(encoding="utf-8-sig")
-    except (OSError, UnicodeDecodeError) as error:
-        raise ConfigError(f"{path}: cannot be read as text ({error}); name a CSV file") from error
-    lines = [line for line in text.splitlines() if line.strip() and not line.lstrip().startswith("#")]
-    rows = list(csv.reader(lines))
-    header = [name.strip().lower() for name in rows[0]] if rows else []
+    rows = _rows(path)
+    header = _header(rows)
     missing = [name for name in names if name.lower() not in header]
     if missing:
         raise ConfigError(
@@ -67,6 +73,19 @@ def read_csv(path: Path, names: Sequence[str]) -> dict[str, Array]:
             f"needed are {', '.join(names)}"
         )
     return {name: _column(path, rows[1:], header.index(name.lower()), name) for name in names}
+
+
+def _rows(path: Path) -> list[list[str]]:
+    try:
+        text = path.read_text(encoding="utf-8-sig")
+    except (OSError, UnicodeDecodeError) as error:
+        raise ConfigError(f"{path}: cannot be read as text ({error}); name a CSV file") from error
+    lines = [line for line in text.splitlines() if line.strip() and not line.lstrip().startswith("#")]
+    return list(csv.reader(lines))
+
+
+def _header(rows: list[list[str]]) -> list[str]:
+    return [name.strip().lower() for name in rows[0]] if rows else []
 
 
 def _column(path: Path, rows: list[list[str]], place: int, name: str) -> Array:

@@ -55,6 +55,39 @@ def neutral_curve_figure(
     return figure
 
 
+def onset_estimate_figure(
+    table: tuple[Array, Array],
+    law: tuple[Array, Array],
+    estimate: tuple[float, float, float],
+    theory: float,
+    labels: tuple[str, str],
+) -> Figure:
+    """Draw a measured table, the law fitted to it, and the onset by both estimate and theory.
+
+    Parameters
+    ----------
+    table, law : tuple of two ndarray
+        Rayleigh numbers and measured values; the same of the fitted law.
+    estimate : tuple of float
+        Onset with the ends of its confidence interval.
+    theory : float
+        Onset by theory.
+    labels : tuple of str
+        What was measured, and the headline.
+    """
+    figure = Figure(figsize=(7.0, 4.6), layout="constrained")
+    axes = figure.add_subplot()
+    best, low, high = estimate
+    axes.axvspan(low, high, color="#D55E00", alpha=0.25, lw=0, label="95 % confidence")
+    axes.axvline(best, color="#D55E00", label=f"onset from the table: {best:.6g}")
+    axes.axvline(theory, color="#0072B2", ls="--", label=f"onset by theory: {theory:.6g}")
+    axes.plot(*law, color="#009E73", label="fitted law")
+    axes.plot(*table, "o", ms=5, mfc="none", color="black", label="table")
+    axes.set(xlabel="Rayleigh number", ylabel=labels[0], title=labels[1])
+    axes.legend(loc="upper center", bbox_to_anchor=(0.5, -0.14), ncol=2, frameon=False)
+    return figure
+
+
 def _mark_wavenumbers(axes: Axes, wavenumbers: Array, rayleigh: Array, period: float) -> None:
     allowed = 2.0 * pi / period * np.arange(1, int(wavenumbers[-1] * period / (2.0 * pi)) + 1)
     allowed = allowed[allowed >= wavenumbers[0]]

@@ -104,3 +104,26 @@ def test_onset_needs_no_compiler() -> None:
     code = "import sys; from rbsim.commands.entry import main; main(['onset']); print('numba' in sys.modules)"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert done.stdout.splitlines()[-1] == "False"
+
+
+@pytest.mark.parametrize("kind", ["Nu", "growth"])
+def test_an_estimate_from_a_table_stands_beside_theory(
+    kind: str, capsys: pytest.CaptureFixture[str], tmp_path: Path
+) -> None:
+    """Invented demonstration data that follow the laws exactly, with onset at 1690."""
+    table, figure = tmp_path / "table.csv", tmp_path / "estimate.png"
+    rayleigh = [1690.0 * (1 + 0.05 * i) for i in range(-3, 10)]
+    values = [max(0.0, 1 - 1690 / ra) for ra in rayleigh]
+    column = (
+        [1 + 1.4 * x + 0.2 * x * x for x in values] if kind == "Nu" else [ra / 1690 - 1 for ra in rayleigh]
+    )
+    table.write_text("\n".join([f"Ra,{kind}", *(f"{a},{b}" for a, b in zip(rayleigh, column, strict=True))]))
+    assert main(["onset", "--from-data", str(table), "--figure", str(figure), "--json"]) == 0
+    facts = json.loads(capsys.readouterr().out)
+    assert facts["rayleigh_estimate"] == pytest.approx(1690, rel=1e-6)
+    assert facts["rayleigh_critical"] == pytest.approx(1707.7617771, abs=1e-7)
+    low, high = facts["rayleigh_interval"]
+    assert low <= facts["rayleigh_estimate"] <= high
+    assert figure.read_bytes().startswith(b"\x89PNG")
+    assert main(["onset", "--from-data", str(table)]) == 0
+    assert "onset from the table" in capsys.readouterr().out

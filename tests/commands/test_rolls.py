@@ -96,3 +96,20 @@ def test_faults_are_one_line_and_exit_code_2(
     lines = capsys.readouterr().err.splitlines()
     assert len(lines) == 1
     assert words in lines[0]
+
+
+def test_modes_of_a_roll(capsys: pytest.CaptureFixture[str]) -> None:
+    arguments = ["rolls", "--rayleigh", "3e3", "--period", "2", "--grid", "32,32", "--modes"]
+    assert main([*arguments, "--json"]) == 0
+    modes = json.loads(capsys.readouterr().out)["modes"]
+    assert abs(modes[0]["growth"]) < 1e-9  # translation
+    assert modes[1]["growth"] < -0.01
+    assert main(arguments) == 0
+    assert "odd in the mirror" in capsys.readouterr().out
+
+
+def test_no_oscillatory_onset_within_reach_exits_with_6(capsys: pytest.CaptureFixture[str]) -> None:
+    """At large Pr rolls close to onset have no oscillating mode among the leading ones."""
+    options = ["--prandtl", "1000", "--period", "2", "--grid", "32,32", "--oscillatory-onset"]
+    assert main(["rolls", "--rayleigh", "2500", *options]) == 6
+    assert "oscillatory onset" in capsys.readouterr().err

