@@ -20,15 +20,16 @@ if TYPE_CHECKING:
     from rbsim.config.writing import case_to_toml
     from rbsim.errors import ConfigError, RbsimError
     from rbsim.files.reader import RunRecords, open_run
-    from rbsim.simulation.running import Progress, RunOptions, resume, simulate
+    from rbsim.simulation.loop import Progress, RunOptions
+    from rbsim.simulation.running import resume, simulate
     from rbsim.simulation.summary import Summary, summarise
 
 _HOMES = {
     "Case": "rbsim.config.schema",
     "ConfigError": "rbsim.errors",
-    "Progress": "rbsim.simulation.running",
+    "Progress": "rbsim.simulation.loop",
     "RbsimError": "rbsim.errors",
-    "RunOptions": "rbsim.simulation.running",
+    "RunOptions": "rbsim.simulation.loop",
     "RunRecords": "rbsim.files.reader",
     "Summary": "rbsim.simulation.summary",
     "build_case": "rbsim.config.loading",

@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING
 if TYPE_CHECKING:
     from types import FrameType
 
-    from rbsim.simulation.running import Progress
+    from rbsim.simulation.loop import Progress
 
 #: Seconds between two reports, on a terminal and elsewhere.
 EVERY, EVERY_QUIETLY = 0.5, 30.0

@@ -10,7 +10,7 @@ from rbsim.commands.validate import add_configuration
 if TYPE_CHECKING:
     from rbsim.commands.progress import ProgressLine
     from rbsim.files.layout import RunFolder
-    from rbsim.simulation.running import RunOptions
+    from rbsim.simulation.loop import RunOptions
 
 NAME = "run"
 HELP = "simulate a configuration into a new run folder"
@@ -63,7 +63,7 @@ def execute(args: argparse.Namespace) -> int:
 def options_of(args: argparse.Namespace, line: ProgressLine) -> RunOptions:
     """Return the run options of the command line."""
     from rbsim.commands.progress import StopOnSignal
-    from rbsim.simulation.running import RunOptions
+    from rbsim.simulation.loop import RunOptions
 
     return RunOptions(
         threads=args.threads,

@@ -58,8 +58,9 @@ class Recorder:
         rows = dict(counts)
         self._snapshots = rows.pop(SNAPSHOTS)
         self._writer.resume(rows)
-        for late in self._folder.snapshots()[self._snapshots :]:
-            late.unlink()
+        for snapshot in self._folder.snapshots():
+            if snapshot >= self._folder.field(self._snapshots):  # names are numbered in order
+                snapshot.unlink()
 
     def record(self, state: State, step: FinishedStep) -> None:
         """Record what is due."""

@@ -146,10 +146,19 @@ class DuccTransforms:
         return self._rows[: len(stack), :, :modes].copy()
 
 
+def available_threads() -> int:
+    """Return how many processors this process may use."""
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+def installed_libraries() -> tuple[str, ...]:
+    """Return the names of the transform libraries that can be used here, the fastest first."""
+    return ("ducc0.fft", "scipy.fft") if importlib.util.find_spec("ducc0") else ("scipy.fft",)
+
+
 def choose_threads(grid: Grid) -> int:
     """Return how many threads pay for this grid on this machine."""
-    available = len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
-    return max(1, min(available, grid.nx * grid.nz // POINTS_PER_THREAD))
+    return max(1, min(available_threads(), grid.nx * grid.nz // POINTS_PER_THREAD))
 
 
 def choose_transforms(grid: Grid, library: str | None = None) -> Transforms:
@@ -162,8 +171,7 @@ def choose_transforms(grid: Grid, library: str | None = None) -> Transforms:
     library : {"scipy.fft", "ducc0.fft"}, optional
         Library to use instead of the fastest.
     """
-    if library is None:
-        library = "ducc0.fft" if importlib.util.find_spec("ducc0") else "scipy.fft"
+    library = library or installed_libraries()[0]
     if library == "ducc0.fft":
         return DuccTransforms(grid)
     if library == "scipy.fft":

@@ -18,10 +18,11 @@ from rbsim.config.writing import case_to_toml
 from rbsim.diagnostics.quantities import HISTORY
 from rbsim.errors import ConfigError, DivergedError, InterruptedRunError, RunFolderError
 from rbsim.files.fieldfile import read_snapshot
-from rbsim.files.layout import RunFolder
+from rbsim.files.layout import RunFolder, create_run_folder
 from rbsim.files.reader import RunRecords, open_run
 from rbsim.files.runfile import read_run_file
-from rbsim.simulation.running import RunOptions, resume, simulate
+from rbsim.simulation.loop import RunOptions
+from rbsim.simulation.running import resume, simulate
 
 OPTIONS = RunOptions(threads=1, library="scipy.fft")
 
@@ -125,6 +126,20 @@ def test_a_finished_run_goes_on_to_a_later_end(whole: RunFolder, tmp_path: Path)
     assert_same(folder, whole)
     with pytest.raises(ConfigError, match="--until 2"):
         resume(tmp_path / "run", until=2.0, options=OPTIONS)
+
+
+def test_a_run_killed_before_its_first_checkpoint_starts_over(whole: RunFolder, tmp_path: Path) -> None:
+    folder, notices = create_run_folder(tmp_path / "run"), []
+    folder.case.write_text(case_to_toml(small_case()), encoding="utf-8")
+    options = RunOptions(threads=1, library="scipy.fft", notice=notices.append)
+    assert_same(resume(folder.path, options=options), whole)
+    assert "starting over" in notices[0]
+
+
+def test_a_run_goes_on_with_the_library_it_began_with(whole: RunFolder, tmp_path: Path) -> None:
+    """Bit for bit without naming threads or library again."""
+    simulate(small_case(end=2.0), tmp_path / "run", OPTIONS)
+    assert_same(resume(tmp_path / "run", until=3.0), whole)
 
 
 def _start(config: Path, out: Path) -> subprocess.Popen[str]:
