@@ -8,7 +8,7 @@ import math
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from rbsim.commands.plates import add_plate_arguments, describe, plates_of
+from rbsim.commands.plates import add_plate_arguments, describe, plates_of, use_one_matrix_thread
 
 if TYPE_CHECKING:
     from rbsim.stability.disturbances import Disturbance
@@ -55,6 +55,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def execute(args: argparse.Namespace) -> int:
     """Find the onset and what else was asked for."""
+    use_one_matrix_thread()
     from rbsim.stability.marginal import critical_mode
 
     check(args)

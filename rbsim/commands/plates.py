@@ -1,15 +1,25 @@
-"""Arguments that describe a pair of plates, shared by the commands of stability."""
+"""What the commands of stability share: the pair of plates, and one thread for small matrices."""
 
 from __future__ import annotations
 
 import argparse
 import math
+import os
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from rbsim.stability.forms import AnyPlate
 
 THERMAL = "fixed-temperature, fixed-flux, biot=NUMBER, slab=RATIO or slab=RATIO,THICKNESS"
+
+
+def use_one_matrix_thread() -> None:
+    """Keep libraries of linear algebra, if not loaded yet, from waking threads for small matrices.
+
+    On a busy machine those threads wait for each other far longer than they work. What is set stays.
+    """
+    for variable in ("OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS", "OMP_NUM_THREADS"):
+        os.environ.setdefault(variable, "1")
 
 
 def add_plate_arguments(parser: argparse.ArgumentParser) -> None:

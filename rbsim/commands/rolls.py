@@ -9,7 +9,7 @@ from collections.abc import Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from rbsim.commands.plates import add_plate_arguments, plates_of
+from rbsim.commands.plates import add_plate_arguments, plates_of, use_one_matrix_thread
 
 if TYPE_CHECKING:
     from rbsim.dynamics.cell import Cell
@@ -54,6 +54,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def execute(args: argparse.Namespace) -> int:
     """Find the rolls."""
+    use_one_matrix_thread()
     cell, grid = cell_of(args), _grid(args)
     _check_branch_file(args)
     rolls: list[Roll] = []
