@@ -50,6 +50,43 @@ def test_integral_time_of_autoregressive_records(autoregressive, memory, phi):
     assert np.mean(found) == pytest.approx(exact, rel=0.08)
 
 
+def slow_window(rho):
+    """Sokal's window, lag by lag: integral time and last lag."""
+    integral = 0.5
+    for lag in range(1, rho.size):
+        integral += rho[lag]
+        if lag >= 5.0 * integral:
+            return integral, lag
+    raise AssertionError("no window")
+
+
+def slow_initial_sequence(rho):
+    """Geyer's initial monotone sequence, pair by pair: integral time and last lag."""
+    total, smallest = -0.5, math.inf
+    for first in range(0, rho.size - 1, 2):
+        pair = rho[first] + rho[first + 1]
+        if pair <= 0.0:
+            return total, first - 1
+        smallest = min(smallest, pair)
+        total += smallest
+    raise AssertionError("no end")
+
+
+@pytest.mark.parametrize(
+    ("memory", "twin"),
+    [(initial_monotone_memory, slow_initial_sequence), (automatic_window_memory, slow_window)],
+)
+def test_memory_is_the_sum_lag_by_lag_with_wolffs_correction(autoregressive, memory, twin):
+    for record in autoregressive(0.8, 200, 5, seed=6):
+        rest = record - record.mean()
+        covariance = slow_autocovariance(rest)
+        integral, window = twin(covariance / covariance[0])
+        found = memory(rest)
+        assert found.window == window
+        assert found.integral == pytest.approx(integral * (1.0 + (2.0 * window + 1.0) / 200), rel=1e-9)
+        assert found.variance == pytest.approx(record.var(), rel=1e-12)
+
+
 def test_bartletts_error_is_the_sum_term_by_term(autoregressive):
     record = autoregressive(0.7, 300, 1, seed=2)[0]
     found = autocorrelation(record, 1.0, 12.0)
