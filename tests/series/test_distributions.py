@@ -29,6 +29,13 @@ def test_intervals_hold_the_known_density(autoregressive):
     assert 0.91 < np.mean(np.concatenate(inside)) < 0.98
 
 
+def test_bins_of_white_noise_are_those_of_freedman_and_diaconis():
+    record = np.random.default_rng(5).standard_normal(2000)
+    expected = np.histogram_bin_edges(record, "fd").size - 1
+    # the cube root of an effective number known to 20 %
+    assert probability_density(record, 1.0).density.size == pytest.approx(expected, rel=0.1)
+
+
 def test_more_effective_samples_give_more_bins(autoregressive):
     slow, fast = autoregressive(0.95, 4000, 1, seed=3)[0], autoregressive(0.0, 4000, 1, seed=3)[0]
     assert (

@@ -4,7 +4,7 @@ import math
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 from hypothesis.extra.numpy import arrays
 
@@ -22,6 +22,7 @@ def slow_starts(values, begin, end):
 
 @settings(max_examples=100, deadline=None)
 @given(arrays(np.float64, st.integers(2, 60), elements=st.floats(-3, 3)))
+@example(np.array([0.7, 2.0, 0.0, 2.0]))
 def test_starts_are_those_of_a_walk_through_the_record(values):
     assert np.array_equal(excursion_starts(values, 1.0, 0.4), slow_starts(values, 1.0, 0.4))
 

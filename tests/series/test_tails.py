@@ -36,6 +36,19 @@ def test_parameters_maximise_the_likelihood(side):
     assert found.width.mean == pytest.approx(best, rel=1e-5)
 
 
+def test_errors_of_white_tails_are_those_of_maximum_likelihood():
+    found = [tail_fit(r, 1.0, "upper") for r in np.random.default_rng(8).standard_normal((40, 4000))]
+    tail = stats.norm.sf(1.0) * 4000
+    excess = stats.truncnorm(1.0, np.inf, loc=-1.0)
+    # the exponential is not the true tail: error of one over the mean excess by linearisation
+    slope_error = excess.std() / excess.mean() ** 2 / math.sqrt(tail)
+    hazard = stats.norm.pdf(1.0) / stats.norm.sf(1.0)
+    # information of ln σ at σ = 1: variance of z² beyond the threshold
+    width_error = 1.0 / math.sqrt(tail * (2.0 + 2.0 * hazard - hazard**2))
+    assert np.mean([f.slope.standard_error for f in found]) == pytest.approx(slope_error, rel=0.06)
+    assert np.mean([f.width.standard_error for f in found]) == pytest.approx(width_error, rel=0.06)
+
+
 @SIDES
 def test_gaussian_records_have_width_one(autoregressive, side):
     found = [tail_fit(r, 1.0, side) for r in autoregressive(0.8, 8000, 120, seed=2)]
