@@ -77,16 +77,18 @@ def execute(args: argparse.Namespace) -> int:
 
 def _computed(args: argparse.Namespace, cell: Cell, grid: tuple[int, int] | None) -> Iterator[Roll]:
     from rbsim.stability.branches import best_period, branch
-    from rbsim.stability.rolls import settled, solved, steady_roll
+    from rbsim.stability.rolls import roll_path, settled, solved
 
+    *_, roll = roll_path(cell)
     if args.follow:
-        yield from branch(steady_roll(cell, (grid or (48, 32))), args.follow, args.to)
+        yield from branch(roll, args.follow, args.to)
         return
-    rough = args.best_period or args.oscillatory_onset
-    roll = steady_roll(cell, grid or ((48, 32) if rough else None))
     if args.best_period:
         roll = best_period(roll)
-        roll = settled(roll) if grid is None else solved(roll.cell, grid, roll.state)
+    if grid is not None:
+        roll = solved(roll.cell, grid, roll.state)
+    elif not args.oscillatory_onset:  # that refines on its own, at other Rayleigh numbers
+        roll = settled(roll)
     yield roll
 
 
@@ -95,10 +97,9 @@ def _modes(args: argparse.Namespace, rolls: list[Roll]) -> list[RollMode]:
     if not (args.modes or args.oscillatory_onset):
         return []
     from rbsim.errors import NotConvergedError
-    from rbsim.stability.rolls import refined
-    from rbsim.stability.spectrum import MODE_TAIL, OSCILLATING, leading_modes, oscillatory_onset
+    from rbsim.stability.spectrum import OSCILLATING, leading_modes, oscillatory_onset
 
-    last = rolls[-1] if args.grid else refined(rolls[-1], MODE_TAIL)
+    last = rolls[-1] if args.grid else _sufficient(rolls[-1])
     modes = leading_modes(last)
     if not args.oscillatory_onset:
         return modes
@@ -110,6 +111,17 @@ def _modes(args: argparse.Namespace, rolls: list[Roll]) -> list[RollMode]:
     critical, mode = oscillatory_onset(last, swaying[0])
     rolls.append(critical)
     return [mode]
+
+
+def _sufficient(roll: Roll) -> Roll:
+    """Return a roll on a grid that suffices for its modes: before the last doubling, if there was one."""
+    from rbsim.stability.rolls import refined, solved
+    from rbsim.stability.spectrum import MODE_TAIL
+
+    if math.isnan(roll.nusselt_change):
+        return refined(roll, MODE_TAIL)
+    nx, nz = roll.grid
+    return solved(roll.cell, (nx // 2, nz // 2), roll.state)
 
 
 def _mode_facts(mode: RollMode) -> dict[str, Any]:
@@ -143,6 +155,8 @@ def cell_of(args: argparse.Namespace) -> Cell:
         faults.append("--bottom-thermal, --top-thermal: slabs are not possible for rolls; give biot=NUMBER")
     if (args.follow is None) != (args.to is None):
         faults.append("--follow and --to go together")
+    if args.follow and args.grid:
+        faults.append("--grid and --follow exclude each other: a branch refines its grid as it goes")
     if (args.branch or args.states) and not args.follow:
         faults.append("--branch and --states need --follow")
     if args.follow and (args.best_period or args.oscillatory_onset):

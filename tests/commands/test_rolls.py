@@ -78,6 +78,7 @@ def test_figure_and_text(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> 
         (["--rayleigh", "1e4", "--grid", "33,32"], "--grid 33,32"),
         (["--rayleigh", "1e4", "--follow", "period"], "--follow and --to"),
         (["--rayleigh", "1e4", "--branch", "x.csv"], "need --follow"),
+        (["--rayleigh", "1e4", "--grid", "32,32", "--follow", "period", "--to", "3"], "--grid and --follow"),
         (
             ["--rayleigh", "1e4", "--follow", "period", "--to", "3", "--branch", "x.txt"],
             "must be .csv or .h5",
