@@ -4,7 +4,7 @@
 >>> case = rbsim.build_case(rayleigh=1e5, prandtl=1.0, aspect_ratio=2.0, end=60.0)
 >>> case = case.with_thermometer("centre", x=1.0, z=0.5, interval=0.1)
 >>> run = rbsim.simulate(case, "runs/first")                                  # doctest: +SKIP
->>> print(rbsim.summarise(rbsim.open_run(run.path).history).agreement)        # doctest: +SKIP
+>>> print(rbsim.summarise(rbsim.open_run(run.path)).agreement)        # doctest: +SKIP
 
 Names are loaded when they are first used.
 """

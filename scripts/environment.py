@@ -31,7 +31,8 @@ def prepare(extras: str) -> Path:
     print(f"Setting up {FOLDER} (once; takes a minute or two) ...", flush=True)
     if not python.exists():
         venv.create(FOLDER, with_pip=True)
-    run([python, "-m", "pip", "install", "--quiet", "--editable", f"{PROJECT}[{extras}]" if extras else PROJECT])
+    wish = f"{PROJECT}[{extras}]" if extras else PROJECT
+    run([python, "-m", "pip", "install", "--quiet", "--editable", wish])
     stamp.write_text(wanted)
     return python
 

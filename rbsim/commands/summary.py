@@ -41,7 +41,7 @@ def execute(args: argparse.Namespace) -> int:
     if not args.json:
         print_summary(records, args.start)
         return 0
-    summary = summarise(records.history, args.start)
+    summary = summarise(records, args.start)
     if summary is None:
         raise RunFolderError(f"{args.folder}: too few history samples to average; run longer")
     print(json.dumps(summary.as_dict(), indent=2))
@@ -52,7 +52,7 @@ def print_summary(records: RunRecords, start: float | None = None) -> None:
     """Print what a run found as a table."""
     from rbsim.simulation.summary import summarise
 
-    summary = summarise(records.history, start)
+    summary = summarise(records, start)
     facts = records.attributes
     print(
         f"Ra = {facts['rayleigh']:g}  Pr = {facts['prandtl']:g}  Γ = {facts['aspect_ratio']:g}  "
@@ -85,7 +85,7 @@ def table(summary: Summary) -> list[str]:
         f"Reynolds number  {summary.reynolds.mean:.2f} ± {error(summary.reynolds.ci95)}",
         f"roll pairs       {pairs} ({share:.0%} of the time)",
         f"spectral tails   {summary.tails[0]:.1e} in x, {summary.tails[1]:.1e} in z",
-        f"verdict          {agreement.verdict}: balanced values spread by {agreement.spread:.2g} (relative)",
+        f"verdict          {agreement.verdict}: spread {agreement.spread:.1e}, drift {agreement.drift:.1e}",
         f"                 {agreement.advice}",
     ]
     return lines

@@ -51,6 +51,9 @@ Text = Annotated[str, Strict()]
 #: Letters, digits and signs on one line; control characters would break messages and files.
 LINE = r"^[^\p{C}\p{Zl}\p{Zp}]*$"
 
+#: Most points of a grid in one direction.
+MOST_POINTS = 16384
+
 
 class Section(BaseModel):
     """A table of a configuration: unknown keys are errors, values do not change."""
@@ -88,8 +91,8 @@ class Plates(Section):
 class GridSection(Section):
     """Points of the dealiased grid."""
 
-    nx: Whole = _key("horizontal points", PURE, ge=16, le=16384, multiple_of=2)
-    nz: Whole = _key("vertical points", PURE, ge=16, le=16384, multiple_of=2)
+    nx: Whole = _key("horizontal points", PURE, ge=16, le=MOST_POINTS, multiple_of=2)
+    nz: Whole = _key("vertical points", PURE, ge=16, le=MOST_POINTS, multiple_of=2)
 
 
 def _form_of_grid(value: Any) -> str:

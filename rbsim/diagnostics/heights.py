@@ -1,4 +1,8 @@
-"""Horizontal spectra of a state at the heights of the grid, from which every average is formed."""
+"""Horizontal spectra of a state at the heights of the grid, from which every average is formed.
+
+Horizontal averages of products are exact. Vertical ones use Fejér's rule, exact to degree nz − 1, where
+products reach 4 nz/3: the difference is as small as the spectral tails squared.
+"""
 
 from __future__ import annotations
 

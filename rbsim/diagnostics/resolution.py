@@ -17,6 +17,9 @@ MARGIN = 3.0
 #: Vertical points are densest at the plates; in the bulk half the margin suffices.
 BULK_MARGIN = 1.5
 
+#: Vertical points below which budgets of a convecting layer do not close to 0.1 % (measured at Ra = 1e5).
+FEWEST_WHEN_CONVECTING = 64
+
 
 def expected_nusselt(cell: Cell) -> float:
     """Return a rough Nusselt number of the turbulent cell, at least 1.
@@ -61,13 +64,15 @@ def recommended_points(cell: Cell) -> tuple[int, int]:
     tuple of int
         Even numbers without prime factors above 5.
     """
+    # a law for Pr = 1: at lower Pr the heat flux and thus the demand are overestimated
     nusselt = expected_nusselt(cell)
     spacing = pi * smallest_scale(cell, nusselt)
     across = cell.width * MARGIN / spacing
     layer = 0.5 / nusselt
     share = 2.0 * asin(sqrt(min(layer, 0.5))) / pi
     upwards = max(MARGIN * nodes_in_layers(cell, nusselt) / share, 0.5 * pi * BULK_MARGIN / spacing)
-    return _even_and_fast(1.5 * across), _even_and_fast(1.5 * upwards)
+    floor = FEWEST_WHEN_CONVECTING if nusselt > 2.0 else 2 * SMALLEST
+    return _even_and_fast(1.5 * across), _even_and_fast(max(floor, 1.5 * upwards))
 
 
 def _even_and_fast(points: float) -> int:

@@ -25,8 +25,10 @@ def spectral_tails(equations: BoussinesqEquations, state: State) -> tuple[float,
     """
     theta = equations.temperature_basis.to_chebyshev(state.theta)
     w = equations.grid.wavenumbers * equations.flow_basis.to_chebyshev(state.psi)
-    across = max(_tail(_amplitudes(field, axis=0)) for field in (theta, w))
-    upwards = max(_tail(_amplitudes(field, axis=1)) for field in (theta, w))
+    # symmetric rolls fill only every n-th Fourier mode: the tail must hold at least one of them
+    pairs = int(np.argmax(_amplitudes(w, axis=0)))
+    across = max(_tail(_amplitudes(field, axis=0), pairs + 1) for field in (theta, w))
+    upwards = max(_tail(_amplitudes(field, axis=1), 2) for field in (theta, w))
     return across, upwards
 
 
@@ -40,7 +42,7 @@ def _amplitudes(field: ComplexArray, axis: int) -> Array:
     return np.asarray(np.sqrt(np.sum(np.abs(field) ** 2, axis=axis)))
 
 
-def _tail(amplitudes: Array) -> float:
+def _tail(amplitudes: Array, fewest: int) -> float:
     largest = amplitudes.max()
-    count = max(2, int(TAIL * amplitudes.size))
+    count = max(2, fewest, int(TAIL * amplitudes.size))
     return float(amplitudes[-count:].max() / largest) if largest > 0 else 0.0

@@ -4,7 +4,8 @@
     ∂t θ   = −∂x(uθ) − ∂z(wθ) + w + (Ra Pr)^(−1/2) ∇²θ
 
 in free-fall units with u = −∂zψ, w = ∂xψ, T = 1 − z + θ (products as in Basdevant 1983, J. Comput. Phys. 50,
-209). The k = 0 column of ψ carries the mean horizontal flow.
+209). The k = 0 column of ψ carries the mean horizontal flow; ψ = 0 on both plates keeps its net flux zero, by
+a mean pressure gradient that varies in time (no-slip or mixed plates).
 """
 
 from __future__ import annotations

@@ -79,7 +79,7 @@ class March:
         state = self.state
         rate = self._stepper.evaluate(state)
         stride = plan_stride(self._control, self.stride, state.time, rate, self._agenda)
-        if stride.step_size < self._control.smallest:
+        if self._control.longest(rate) < self._control.smallest:
             raise self._divergence("fell below the smallest step", rate, stride.step_size)
         self._stepper.set_step_size(stride.step_size)
         self._stepper.advance(state)

@@ -4,10 +4,16 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
-from math import ceil, floor, inf
+from math import ceil, floor, inf, ulp
 
 #: Two times closer than this fraction of the shortest interval are the same time.
 SAME_TIME = 1e-6
+
+#: So are two times closer than this, or than a few roundings of the time itself.
+SAME_MOMENT, ROUNDINGS = 1e-7, 8.0
+
+#: A stride is planned anew when its steps could be longer by this factor.
+GROWTH = 1.5
 
 #: Fresh strides aim a little below the Courant limit, so that they seldom need to be cut.
 AIM = 0.9
@@ -28,25 +34,26 @@ class Agenda:
     intervals: Mapping[str, float]
     end: float
 
-    @property
-    def _tolerance(self) -> float:
-        return SAME_TIME * min(self.intervals.values(), default=self.end or 1.0)
+    def _tolerance(self, time: float) -> float:
+        """Return how close two times near `time` must be to be the same, below half the shortest interval."""
+        shortest = min(self.intervals.values(), default=self.end or 1.0)
+        return min(0.4 * shortest, max(SAME_TIME * shortest, SAME_MOMENT, ROUNDINGS * ulp(time)))
 
     def next_after(self, time: float) -> float:
         """Return the first appointment later than `time`."""
-        soonest = self.end
+        soonest, tolerance = self.end, self._tolerance(time)
         for interval in self.intervals.values():
-            soonest = min(soonest, interval * (floor((time + self._tolerance) / interval) + 1))
-        return self.end if self.end - soonest < self._tolerance else soonest
+            soonest = min(soonest, interval * (floor((time + tolerance) / interval) + 1))
+        return self.end if self.end - soonest < tolerance else soonest
 
     def due_at(self, time: float) -> tuple[str, ...]:
         """Return the kinds of appointments that fall on `time`."""
         due = [
             name
             for name, interval in self.intervals.items()
-            if abs(time - interval * round(time / interval)) < self._tolerance
+            if abs(time - interval * round(time / interval)) < self._tolerance(time)
         ]
-        return (*due, "end") if time >= self.end - self._tolerance else tuple(due)
+        return (*due, "end") if time >= self.end - self._tolerance(time) else tuple(due)
 
 
 @dataclass(frozen=True)
@@ -56,13 +63,14 @@ class StepControl:
     Parameters
     ----------
     courant : float
-        Largest Courant number Δt·max(|u|/Δx + |w|/Δz) on the dealiased grid (stable up to about 1.1).
+        Largest Courant number Δt·max(|u|/Δx + |w|/Δz) on the dealiased grid. Pure advection is stable up to
+        √3·3/(2π) = 0.83; more only where diffusion damps the last modes.
     largest : float
         Largest step in free-fall times.
     fixed : bool
-        Always take `largest`, shortened only to hit appointments.
+        Ignore the Courant number: the way to each appointment is split evenly into steps up to `largest`.
     smallest : float
-        A smaller step means that the state explodes.
+        A Courant limit that asks for a smaller step means that the state explodes.
     """
 
     courant: float = 0.8
@@ -103,7 +111,7 @@ class Stride:
 def plan_stride(
     control: StepControl, stride: Stride | None, time: float, rate: float, agenda: Agenda
 ) -> Stride:
-    """Continue a stride, cut its steps when the Courant limit asks for it, or begin the next one.
+    """Continue a stride, fit its steps to the Courant limit when need be, or begin the next one.
 
     A pure function of its arguments, so that a resumed march takes the very same steps.
 
@@ -121,7 +129,9 @@ def plan_stride(
         Appointments.
     """
     if stride is not None and stride.left > 0:
-        if stride.step_size <= control.longest(rate) * (1.0 + SAME_TIME):
+        too_long = stride.step_size > control.longest(rate) * (1.0 + SAME_TIME)
+        too_short = stride.left > 1 and stride.step_size * GROWTH < control.longest(rate, AIM)
+        if not too_long and not too_short:
             return stride
         target = stride.target
     else:

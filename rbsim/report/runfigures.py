@@ -35,7 +35,7 @@ def draw_run(records: RunRecords) -> list[Path]:
         Files drawn.
     """
     folder, title = records.folder.figures, _title(records)
-    summary = summarise(records.history)
+    summary = summarise(records)
     window = (summary.start, summary.end) if summary else None
     figures = {"nusselt_history": nusselt_history(records.history, window, title)}
     if records.thermometers:

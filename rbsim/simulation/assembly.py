@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from rbsim.config.schema import Case
+from rbsim.config.schema import MOST_POINTS, Case
 from rbsim.diagnostics.resolution import recommended_points
 from rbsim.dynamics.cell import Cell, Plate
 from rbsim.dynamics.equations import BoussinesqEquations
@@ -42,6 +42,11 @@ def grid_of(case: Case) -> Grid:
         nx, nz = recommended_points(cell_of(case))
     else:
         nx, nz = case.grid.nx, case.grid.nz
+    if max(nx, nz) > MOST_POINTS:
+        raise ConfigError(
+            f"case: key 'grid' = \"auto\": would need {nx} x {nz} points, more than {MOST_POINTS} in a "
+            "direction; give grid.nx and grid.nz, or a smaller numbers.rayleigh or cell.aspect_ratio"
+        )
     grid = Grid(nx, nz, case.cell.aspect_ratio)
     if case.start.kind == "roll" and case.start.pairs >= grid.modes_x:
         raise ConfigError(

@@ -168,7 +168,7 @@ class RunLoop:
 
 def write_summary(folder: RunFolder) -> Summary | None:
     """Average a run, write summary.json and return the summary (None for very short runs)."""
-    summary = summarise(open_run(folder.path).history)
+    summary = summarise(open_run(folder.path))
     if summary is not None:
         write_text(folder.summary, json.dumps(summary.as_dict(), indent=2) + "\n")
     return summary

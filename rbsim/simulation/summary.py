@@ -9,8 +9,11 @@ from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.integrate import trapezoid
 
 from rbsim.diagnostics.nusselt import DEFINITIONS
+from rbsim.errors import ConfigError
+from rbsim.files.reader import RunRecords
 from rbsim.series.averages import mean_with_error
 from rbsim.series.estimate import Estimate
 from rbsim.series.transient import Transient, latest_transient
@@ -45,7 +48,7 @@ class NusseltMean:
 
     @property
     def balanced(self) -> float:
-        """Average with the unsteady term: the same for all definitions but for errors of the numerics."""
+        """Average with the unsteady term: the same for all definitions but for errors of the grid."""
         return self.raw.mean + self.storage
 
 
@@ -56,14 +59,18 @@ class Agreement:
     Parameters
     ----------
     spread : float
-        Largest minus smallest balanced average, over their mean.
+        Largest minus smallest balanced average, over their mean: an error of the grid.
+    drift : float
+        Difference between the averaged storage of energy or heat and what was stored from the first to the
+        last sample, over the mean Nusselt number: an error of the time steps, or of a too sparse history.
     verdict : {"agree", "doubtful", "disagree"}
-        Spread up to 1 %, up to 3 %, above.
+        The larger of both up to 1 %, up to 3 %, above.
     advice : str
         What to do next.
     """
 
     spread: float
+    drift: float
     verdict: str
     advice: str
 
@@ -121,6 +128,7 @@ class Summary:
             "reynolds": {"mean": self.reynolds.mean, "ci95": _finite(self.reynolds.ci95)},
             "agreement": {
                 "spread": self.agreement.spread,
+                "drift": self.agreement.drift,
                 "verdict": self.agreement.verdict,
                 "advice": self.agreement.advice,
             },
@@ -130,13 +138,23 @@ class Summary:
         }
 
 
-def summarise(history: Mapping[str, Array], start: float | None = None) -> Summary | None:
+def summarise(records: RunRecords, start: float | None = None) -> Summary | None:
+    """Average the history of a run over its steady part; see `average_history`."""
+    rayleigh, prandtl = (float(records.attributes[name]) for name in ("rayleigh", "prandtl"))
+    return average_history(records.history, 1.0 / math.sqrt(rayleigh * prandtl), start)
+
+
+def average_history(
+    history: Mapping[str, Array], diffusivity: float, start: float | None = None
+) -> Summary | None:
     """Average a history over its steady part.
 
     Parameters
     ----------
     history : mapping of str to ndarray, shape (samples,)
         History quantities and ``time``.
+    diffusivity : float
+        (Ra Pr)^(−1/2).
     start : float, optional
         Start of the window in free-fall times instead of the detected end of the transient.
 
@@ -144,13 +162,20 @@ def summarise(history: Mapping[str, Array], start: float | None = None) -> Summa
     -------
     Summary or None
         None if there are too few samples to average.
+
+    Raises
+    ------
+    ConfigError
+        If the wanted start leaves too few samples.
     """
     time = history["time"]
     if time.size < FEWEST_SAMPLES:
         return None
     transient = latest_transient({name: history[name] for name in DECISIVE})
     if start is not None:
-        first = min(int(np.searchsorted(time, start)), time.size - FEWEST_SAMPLES)
+        first = int(np.searchsorted(time, start))
+        if first > time.size - FEWEST_SAMPLES:
+            raise ConfigError(f"start of the averages {start:g}: must be well before the end {time[-1]:g}")
         transient = Transient(first, True, "start given by the user")
     window = slice(transient.index, None)
     cut = {name: values[window] for name, values in history.items()}
@@ -162,28 +187,48 @@ def summarise(history: Mapping[str, Array], start: float | None = None) -> Summa
         transient=transient,
         nusselt=nusselt,
         reynolds=mean_with_error(cut["reynolds"], spacing),
-        agreement=judge([value.balanced for value in nusselt.values()]),
+        agreement=judge([value.balanced for value in nusselt.values()], _drift(cut, diffusivity)),
         roll_pairs=_usual(cut["roll_pairs"]),
         tails=(float(np.median(cut["tail_x"])), float(np.median(cut["tail_z"]))),
     )
 
 
-def judge(balanced: list[float]) -> Agreement:
+def judge(balanced: list[float], drift: float) -> Agreement:
     """Compare balanced averages of all definitions.
 
     Parameters
     ----------
     balanced : list of float
         Averages with their unsteady terms.
+    drift : float
+        Error of the budgets over the window, in units of the Nusselt number.
     """
-    spread = float(np.ptp(balanced) / abs(np.mean(balanced)))
-    if spread <= AGREES:
-        return Agreement(spread, "agree", "the definitions agree; the error bars say how long to average")
-    if spread <= DOUBTFUL:
-        return Agreement(
-            spread, "doubtful", "use a grid about 1.3 times finer in both directions and compare"
-        )
-    return Agreement(spread, "disagree", "the grid is too coarse for these numbers; do not use them")
+    mean = abs(float(np.mean(balanced)))
+    spread, drift = float(np.ptp(balanced)) / mean, drift / mean
+    worst = max(spread, drift)
+    if worst <= AGREES:
+        return Agreement(spread, drift, "agree", "the error bars say whether the time was long enough")
+    if spread >= drift:
+        advice = "use a grid about 1.3 times finer in both directions and compare"
+    else:
+        advice = "use a shorter output.history_interval, or a smaller time.courant, and compare"
+    return Agreement(spread, drift, "doubtful" if worst <= DOUBTFUL else "disagree", advice)
+
+
+def _drift(cut: Mapping[str, Array], diffusivity: float) -> float:
+    """Compare mean storage rates with what was stored from the first to the last sample.
+
+    Kinetic energy and mean temperature are known at the ends; their rates come from the equations, so that an
+    error of the time steps shows.
+    """
+    span = float(cut["time"][-1] - cut["time"][0])
+    warming = cut["storage_top"] - cut["storage_bottom"]
+    pairs = ((cut["storage_kinetic"], "kinetic_energy"), (warming, "temperature_mean"))
+    errors = (
+        float(trapezoid(rate, cut["time"])) - float(cut[name][-1] - cut[name][0]) / diffusivity
+        for rate, name in pairs
+    )
+    return max(abs(error) for error in errors) / span
 
 
 def _nusselt_mean(cut: Mapping[str, Array], name: str, spacing: float) -> NusseltMean:

@@ -4,8 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
+from itertools import pairwise
 
 import numpy as np
+
+#: Borders of shares are multiples of this, the columns of one vector instruction: then each column is
+#: computed in the same way whatever the number of threads.
+GRANULE = 8
 
 #: Work on items start … stop−1 as member number `member`.
 Share = Callable[[int, int, int], None]
@@ -27,12 +32,14 @@ class Team:
         self._pool = ThreadPoolExecutor(threads - 1, "rbsim") if threads > 1 else None
 
     def share(self, items: int, work: Share) -> None:
-        """Split `items` evenly among the threads and wait until all have done their share."""
+        """Split `items` about evenly among the threads and wait until all have done their share."""
         if self._pool is None:
             work(0, items, 0)
             return
-        edges = np.linspace(0, items, self.threads + 1).astype(int).tolist()
-        others = [self._pool.submit(work, edges[i], edges[i + 1], i) for i in range(1, self.threads)]
-        work(0, edges[1], 0)
+        inner = np.rint(np.linspace(0, items, self.threads + 1)[1:-1] / GRANULE).astype(int) * GRANULE
+        edges = [0, *np.minimum(inner, items).tolist(), items]
+        shares = [(a, b, member) for member, (a, b) in enumerate(pairwise(edges)) if a < b]
+        others = [self._pool.submit(work, *share) for share in shares[1:]]
+        work(*shares[0])
         for other in others:
             other.result()

@@ -139,6 +139,34 @@ def test_roll_pairs_and_tails_describe_a_single_roll() -> None:
     assert history["tail_z"] < 1e-5
 
 
+def test_mean_temperature_energy_and_layers_equal_plain_averages_of_an_asymmetric_flow() -> None:
+    equations = _equations(Cell(5e4, 1.0, 2.0, Plate("no-slip"), Plate("free-slip")), 64, 64)
+    state = _evolve(equations, conduction_with_noise(equations, 0.05, 5), 9.0)
+    state.theta[0, 0] += 0.1  # warm the middle: top and bottom differ for certain
+    history, grid = Measurement(equations).history(state), equations.grid
+    u, w, temperature = equations.fields(state)
+    mean = temperature.mean(axis=1)
+    assert history["temperature_mean"] == pytest.approx(grid.weights_z @ mean, rel=1e-12)
+    energy = 0.5 * grid.weights_z @ np.mean(u**2 + w**2, axis=1)
+    assert history["kinetic_energy"] == pytest.approx(energy, rel=1e-12)
+    middle = np.interp(0.5, grid.z, mean)
+    bottom = (1 - middle) / ((1 - mean[0]) / grid.z[0])
+    top = middle / (mean[-1] / (1 - grid.z[-1]))
+    # slopes from the first grid point, the middle from a line between two points
+    assert history["thermal_layer_bottom"] == pytest.approx(bottom, rel=2e-3)
+    assert history["thermal_layer_top"] == pytest.approx(top, rel=2e-3)
+    assert abs(bottom - top) > 0.02
+
+
+def test_tails_are_the_amplitude_of_the_last_modes_over_the_largest() -> None:
+    equations = _equations(Cell(1e4, 1.0, 2.0), 64, 48)
+    state = equations.new_state()
+    state.theta[0, 1], state.theta[0, -1], state.theta[-1, 1] = 1.0, 3e-3, 2e-4
+    history = Measurement(equations).history(state)
+    assert history["tail_x"] == pytest.approx(3e-3, rel=1e-3)
+    assert 1e-4 < history["tail_z"] < 4e-4
+
+
 def test_thermal_layers_end_where_the_plate_tangent_meets_the_middle() -> None:
     assert thermal_layers((10.0, 4.0), 0.4) == (pytest.approx(0.06), pytest.approx(0.1))
 
