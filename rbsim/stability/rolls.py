@@ -67,6 +67,10 @@ class Roll:
 def steady_roll(cell: Cell, grid: tuple[int, int] | None = None) -> Roll:
     """Return the steady roll pair of a cell.
 
+    The rolls are followed from onset in steps of up to a factor of two in Ra. Where several rolls of the same
+    symmetry coexist (no-slip, Pr = 1, Γ = 2: above Ra ≈ 1.6e7) such a step may meet another one; `branch`
+    follows one solution in small steps.
+
     Parameters
     ----------
     cell : Cell
